@@ -1,0 +1,5 @@
+//! Tube laws, ratings, catalog.
+
+mod device;
+
+pub use device::{Currents, Device};
