@@ -20,7 +20,9 @@
 //! The library opens no files, prints nothing and never exits; the `forehear` program does.
 //! The interface is unstable before version 1.0.
 
+pub mod circuit;
 pub mod design;
 pub mod diagnostic;
+pub mod stage;
 pub mod tube;
 pub mod units;
