@@ -29,6 +29,20 @@ codes! {
     // -- design file
 
     // -- tube file
+    /// A tube file of a format this program does not read.
+    TubeFormat = "tube-format",
+    /// A key no tube file has at that place.
+    TubeUnknownKey = "tube-unknown-key",
+    /// A key every tube file must have.
+    TubeMissingKey = "tube-missing-key",
+    /// A value of the wrong type.
+    TubeWrongType = "tube-wrong-type",
+    /// A value outside the allowed range.
+    TubeOutOfRange = "tube-out-of-range",
+    /// A text that is none of the allowed words.
+    TubeUnknownWord = "tube-unknown-word",
+    /// Parameters that make plate current negative or let it fall with rising volts.
+    TubeLaw = "tube-law",
 
     // -- sound file
 
