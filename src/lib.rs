@@ -24,5 +24,8 @@ pub mod circuit;
 pub mod design;
 pub mod diagnostic;
 pub mod stage;
+pub mod resample;
+pub mod signal;
 pub mod tube;
 pub mod units;
+pub mod wav;
