@@ -45,6 +45,38 @@ codes! {
     TubeLaw = "tube-law",
 
     // -- sound file
+    /// The file has no bytes.
+    WavEmptyFile = "wav-empty-file",
+    /// Another kind of file that was recognized.
+    WavOtherKind = "wav-other-kind",
+    /// Does not begin as any WAV does, and was not recognized.
+    WavNotRiff = "wav-not-riff",
+    /// RIFF, but the form inside is not WAVE.
+    WavNotWave = "wav-not-wave",
+    /// RIFX: the same layout with its bytes the other way round.
+    WavBigEndian = "wav-big-endian",
+    /// The file ends inside its header.
+    WavHeaderCut = "wav-header-cut",
+    /// No `fmt ` chunk before the samples.
+    WavNoFormat = "wav-no-format",
+    /// The `fmt ` chunk contradicts itself.
+    WavBadFormat = "wav-bad-format",
+    /// Coded samples (mu-law, ADPCM, MP3 inside).
+    WavCompressed = "wav-compressed",
+    /// A sample size that is not read.
+    WavBitDepth = "wav-bit-depth",
+    /// The header promises zero channels.
+    WavNoChannels = "wav-no-channels",
+    /// Sample rate outside 8 to 192 kHz.
+    WavRate = "wav-rate",
+    /// No `data` chunk.
+    WavNoData = "wav-no-data",
+    /// A `data` chunk without a whole frame.
+    WavNoFrames = "wav-no-frames",
+    /// The header promises more frames than the file has.
+    WavTruncated = "wav-truncated",
+    /// A sample that is not a number, or infinite.
+    WavNotFinite = "wav-not-finite",
 
     // -- results (warnings)
 }
