@@ -26,6 +26,8 @@ pub mod diagnostic;
 pub mod stage;
 pub mod resample;
 pub mod signal;
+pub mod measure;
+pub mod numeric;
 pub mod tube;
 pub mod units;
 pub mod wav;

@@ -1,0 +1,3 @@
+//! Numerics that the linear algebra crate lacks.
+
+pub mod fft;
