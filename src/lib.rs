@@ -23,11 +23,12 @@
 pub mod circuit;
 pub mod design;
 pub mod diagnostic;
-pub mod stage;
-pub mod resample;
-pub mod signal;
 pub mod measure;
 pub mod numeric;
+pub mod render;
+pub mod resample;
+pub mod signal;
+pub mod stage;
 pub mod tube;
 pub mod units;
 pub mod wav;

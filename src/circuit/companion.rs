@@ -304,7 +304,9 @@ fn discretize(
     let volts = if m == 0 {
         rhs
     } else {
-        y.lu().solve(&rhs).expect("every node of a network has a part to somewhere")
+        y.lu()
+            .solve(&rhs)
+            .expect("every node of a network has a part to somewhere")
     };
     let node_form = |n: Node| -> Vec<f64> {
         if let Some(row) = local(n) {

@@ -1,3 +1,4 @@
 //! Numerics that the linear algebra crate lacks.
 
 pub mod fft;
+pub mod table;

@@ -1,6 +1,8 @@
 //! A design and a catalog become a solved amplifier.
 
+pub mod amplifier;
 pub mod iron;
 pub mod loudspeaker;
 pub mod supply;
+pub mod surface;
 pub mod wiring;

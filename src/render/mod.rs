@@ -1,0 +1,11 @@
+//! The sample loop: a solved amplifier, one sample after the other.
+
+mod kernel;
+mod layout;
+mod model;
+mod network;
+#[cfg(test)]
+mod tests;
+
+pub use kernel::{Kernel, Observation};
+pub use model::{Fineness, Model, ModelFault, instantaneous};
