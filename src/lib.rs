@@ -29,6 +29,8 @@ pub mod render;
 pub mod resample;
 pub mod signal;
 pub mod stage;
+pub mod study;
+pub mod trial;
 pub mod tube;
 pub mod units;
 pub mod wav;

@@ -3,6 +3,8 @@
 pub mod amplifier;
 pub mod iron;
 pub mod loudspeaker;
+pub mod operating_point;
+pub mod ratings;
 pub mod supply;
 pub mod surface;
 pub mod wiring;

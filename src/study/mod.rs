@@ -1,0 +1,3 @@
+//! A design at its gain settings.
+
+pub mod result;
