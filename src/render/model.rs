@@ -3,6 +3,7 @@
 use std::sync::Arc;
 
 use super::kernel::Kernel;
+use crate::circuit::PartKind;
 use crate::circuit::companion::{Network, Port, cut};
 use crate::stage::amplifier::Amplifier;
 use crate::stage::surface::{Extent, Surface, Surroundings};
@@ -15,6 +16,7 @@ pub struct Model {
     pub surfaces: Vec<Arc<Surface>>,
     /// Every state at the surfaces' own rest.
     pub rest: Vec<f64>,
+    scales: Vec<f64>,
     pub turns_ratio: f64,
     pub output_rail: usize,
     pub rails: usize,
@@ -116,8 +118,18 @@ impl Model {
                 v[d.plate] - v[d.cathode],
             ]);
         }
+        let mut scales: Vec<f64> = networks
+            .iter()
+            .flat_map(|n| &n.reactive)
+            .map(|&p| match amp.wiring.net.parts[p].kind {
+                PartKind::Inductor(_) => 1e-3,
+                _ => 1.0,
+            })
+            .collect();
+        scales.resize(rest.len(), 1.0);
         let mut model = Model {
             rate,
+            scales,
             networks,
             surfaces,
             rest,
@@ -128,6 +140,11 @@ impl Model {
         };
         model.settle()?;
         Ok(model)
+    }
+
+    /// What counts as one unit of each state: a volt on a capacitor, a milliampere in an inductor.
+    pub fn state_scales(&self) -> Vec<f64> {
+        self.scales.clone()
     }
 
     /// Newton's method on one silent step: the exact rest differs from the surfaces' by their interpolation error.

@@ -226,7 +226,7 @@ fn speed() {
         .iter()
         .map(|g| Model::new(&amplifier(*g), rate, 1.0).unwrap())
         .collect();
-    let n = 3_840_000;
+    let n = 384_000;
     let input: Vec<f64> = (0..n)
         .map(|k| 0.2 * (k as f64 * std::f64::consts::TAU * 1e3 / rate).sin())
         .collect();
@@ -255,4 +255,37 @@ fn speed() {
         three.strayed
     );
     let _ = Arc::new(());
+}
+
+#[test]
+fn shoot() {
+    use crate::measure::harmonics::HarmonicAnalysis;
+    use crate::trial::steady::{Shooter, Tone};
+    let rate = 384e3;
+    let model = Model::new(&amplifier(5.0), rate, 8.0).unwrap();
+    for hz in [1000.0, 82.4] {
+        let t = std::time::Instant::now();
+        let mut shooter = Shooter::new(&model, Tone::new(hz, rate));
+        println!("{hz} new {:?}", t.elapsed());
+        for k in -20..=16 {
+            let level = 0.2 * 10f64.powf(k as f64 / 10.0);
+            let t = std::time::Instant::now();
+            let c = shooter.steady(level);
+            let dt = t.elapsed();
+            let h = HarmonicAnalysis::of_period(&c.output)
+                .unwrap()
+                .report()
+                .unwrap();
+            println!(
+                "{level:8.4} V periods {:4} settled {} out {:8.4} V thd {:8.4} H2 {:?} H3 {:?}  {:?}",
+                c.periods,
+                c.settled,
+                h.rms,
+                h.thd_percent,
+                h.signed_percent[0],
+                h.signed_percent[1],
+                dt
+            );
+        }
+    }
 }
