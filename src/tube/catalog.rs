@@ -8,7 +8,12 @@ use super::file::read_tube;
 /// Tube files that come with the program.
 const SHIPPED: &[(&str, &str)] = &[
     ("12ax7", include_str!("../../presets/tubes/12ax7.toml")),
+    ("12at7", include_str!("../../presets/tubes/12at7.toml")),
+    ("12au7", include_str!("../../presets/tubes/12au7.toml")),
+    ("6sn7", include_str!("../../presets/tubes/6sn7.toml")),
     ("el84", include_str!("../../presets/tubes/el84.toml")),
+    ("6v6", include_str!("../../presets/tubes/6v6.toml")),
+    ("6l6gc", include_str!("../../presets/tubes/6l6gc.toml")),
 ];
 
 /// Tubes found by name or alias, whatever the case of the letters.

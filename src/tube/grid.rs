@@ -1,4 +1,17 @@
 //! Grid current, for any tube.
+//!
+//! # Types without grid-current data
+//!
+//! Of the shipped types only the 12AT7 has published grid current above a few microamperes. The others' entries say *assumed*
+//! and hold a stand-in: the 12AT7's exponents and sharpness, with its perveance G scaled by space current,
+//!
+//! ```text
+//! G = G(12AT7) I0/I0(12AT7),    I0 = ip + is at vg = +2 V, vp = vs = 100 V,
+//! ```
+//!
+//! and Q = 0 for pentodes, whose screen shields the grid from the plate. Onset volts are the 12AT7's too, except where a mark is
+//! published (12AU7, EL84). Constants of one type have been seen to miss another's currents by factors of 2 to 6, so
+//! treat an assumed grid current as right in its onset within a few tenths of a volt, and in its size within such a factor.
 
 use super::softplus::{VOLTS_LIMIT, softplus};
 

@@ -4,6 +4,8 @@ mod catalog;
 mod device;
 mod entry;
 mod file;
+#[cfg(test)]
+mod file_tests;
 mod grid;
 mod pentode;
 mod reader;

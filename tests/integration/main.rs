@@ -1,1 +1,3 @@
 //! One file for each kind of evidence.
+
+mod published_tubes;
