@@ -1,8 +1,15 @@
 //! Test signals: tones, bursts, and a synthetic guitar.
 
+mod guitar;
+mod practice;
 mod random;
 mod tone;
 
+pub use guitar::{Guitar, GuitarString, Pickup, Pluck};
+pub use practice::{
+    DEFAULT_DI, DEMO_FULL_SCALE_VOLTS, DEMO_RATE, damped_bursts, open_chords, practice_phrase,
+    rising_notes, slow_arpeggio,
+};
 pub use random::SplitMix64;
 pub use tone::{Bursts, coherent_bin, coherent_tone, tone, two_tone};
 

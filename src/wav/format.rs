@@ -107,7 +107,7 @@ pub(super) fn parse(chunk: &[u8]) -> Result<Format, WavFault> {
             WOULD_DO,
         ));
     }
-    if frame_bytes % channels != 0 || frame_bytes / channels * 8 < bits {
+    if frame_bytes % channels != 0 || u32::from(frame_bytes / channels) * 8 < u32::from(bits) {
         return Err(bad(format!(
             "its header promises frames of {frame_bytes} bytes, which {channels} channel(s) of {bits} bits do not fill"
         )));
