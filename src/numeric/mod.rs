@@ -2,3 +2,5 @@
 
 pub mod fft;
 pub mod table;
+pub mod root;
+pub mod window;
