@@ -1,4 +1,7 @@
+use super::notation::{self, DBU_REFERENCE, DBV_REFERENCE, NotationError};
+use super::unit::Unit;
 use std::fmt;
+use std::str::FromStr;
 
 macro_rules! quantity {
     ($(#[$doc:meta])* $name:ident, $symbol:literal) => {
@@ -16,9 +19,18 @@ macro_rules! quantity {
             }
         }
 
+        /// Reads component notation, see [`notation`].
+        impl FromStr for $name {
+            type Err = NotationError;
+
+            fn from_str(text: &str) -> Result<Self, NotationError> {
+                notation::parse(text, Unit::$name).map(Self)
+            }
+        }
+
         impl fmt::Display for $name {
             fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-                f.write_str(&super::notation::engineering(self.0, $symbol))
+                f.write_str(&notation::engineering(self.0, $symbol))
             }
         }
     };
@@ -60,3 +72,27 @@ quantity!(
     /// Power, in watts.
     Watts, "W"
 );
+
+impl VoltsPeak {
+    /// Level of a sine with this peak, in dBV (RMS re 1 V): 20·lg(peak/√2). Minus infinity for silence.
+    pub fn dbv(self) -> f64 {
+        20.0 * (self.0 / (std::f64::consts::SQRT_2 * DBV_REFERENCE)).log10()
+    }
+
+    /// Level of a sine with this peak, in dBu (RMS re 0.7746 V). Minus infinity for silence.
+    pub fn dbu(self) -> f64 {
+        20.0 * (self.0 / (std::f64::consts::SQRT_2 * DBU_REFERENCE)).log10()
+    }
+
+    /// RMS volts of a sine with this peak: peak/√2.
+    pub fn sine_rms(self) -> VoltsRms {
+        VoltsRms(self.0 / std::f64::consts::SQRT_2)
+    }
+}
+
+impl VoltsRms {
+    /// Peak volts of a sine with this RMS value: √2·RMS.
+    pub fn sine_peak(self) -> VoltsPeak {
+        VoltsPeak(self.0 * std::f64::consts::SQRT_2)
+    }
+}
