@@ -1,6 +1,6 @@
 //! Numerics that the linear algebra crate lacks.
 
 pub mod fft;
-pub mod table;
 pub mod root;
+pub mod table;
 pub mod window;

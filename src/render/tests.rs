@@ -289,3 +289,28 @@ fn shoot() {
         }
     }
 }
+
+#[test]
+fn tone_run() {
+    let rate = 384e3;
+    let amp = amplifier(5.0);
+    let model = Model::new(&amp, rate, 8.0).unwrap();
+    for hz in [1000.0, 82.4] {
+        let t = std::time::Instant::now();
+        let f = crate::trial::tone::run(&amp, &model, hz, 0.2);
+        println!(
+            "{hz}: {:?} {:?}\n{:?}\n{:?}\n{:?}\n{:?}",
+            t.elapsed(),
+            f.onset,
+            f.headroom,
+            f.thd_inputs,
+            f.compression_1db_v_peak,
+            f.power
+        );
+    }
+    for hz in [1200.0, 2600.0, 4100.0] {
+        for v in [0.0015, 0.006, 0.024] {
+            println!("{:?}", crate::trial::alias::measure(&model, hz, v, 48e3));
+        }
+    }
+}

@@ -105,6 +105,16 @@ impl<'a> Shooter<'a> {
         self.jacobian = None;
     }
 
+    /// The state as the last call left it.
+    pub fn state(&self) -> Vec<f64> {
+        self.kernel.state(0)
+    }
+
+    /// Goes on from a state that [`Shooter::state`] gave at another level.
+    pub fn resume(&mut self, state: &[f64]) {
+        self.kernel.set_state(0, state);
+    }
+
     pub fn model(&self) -> &Model {
         self.model
     }
@@ -154,8 +164,33 @@ impl<'a> Shooter<'a> {
     /// themselves. When that fails the amplifier is simply left running for a while.
     pub fn steady(&mut self, level: f64) -> Cycle {
         let started = self.periods;
-        let mut settled = false;
-        'jacobians: for attempt in 0..JACOBIANS {
+        let mut settled = self.shoot(level);
+        if !settled {
+            // From rest by doublings: a far level is out of reach of one tangent.
+            self.reset();
+            settled = (0..=6)
+                .rev()
+                .map(|k| self.shoot(level * 0.5f64.powi(k)))
+                .last()
+                .unwrap_or(false);
+        }
+        if !settled {
+            self.jacobian = None;
+            for _ in 0..PATIENCE {
+                let before = self.kernel.state(0);
+                self.period(level);
+                let after = self.kernel.state(0);
+                if self.residual(&before, &after).amax() < SETTLED {
+                    settled = true;
+                    break;
+                }
+            }
+        }
+        self.record(level, settled, started)
+    }
+
+    fn shoot(&mut self, level: f64) -> bool {
+        for attempt in 0..JACOBIANS {
             if self.uses >= 7 * STEPS_PER_JACOBIAN || attempt > 0 {
                 self.jacobian = None;
             }
@@ -178,8 +213,7 @@ impl<'a> Shooter<'a> {
             let mut smallest = f.amax();
             for _ in 0..STEPS_PER_JACOBIAN {
                 if f.amax() < SETTLED {
-                    settled = true;
-                    break 'jacobians;
+                    return true;
                 }
                 self.uses += 1;
                 let Some(j) = &self.jacobian else { break };
@@ -217,19 +251,7 @@ impl<'a> Shooter<'a> {
                 smallest = smallest.min(f.amax());
             }
         }
-        if !settled {
-            self.jacobian = None;
-            for _ in 0..PATIENCE {
-                let before = self.kernel.state(0);
-                self.period(level);
-                let after = self.kernel.state(0);
-                if self.residual(&before, &after).amax() < SETTLED {
-                    settled = true;
-                    break;
-                }
-            }
-        }
-        self.record(level, settled, started)
+        false
     }
 
     fn record(&mut self, level: f64, settled: bool, started: usize) -> Cycle {

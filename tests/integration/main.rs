@@ -1,5 +1,5 @@
 //! One file for each kind of evidence.
 
-mod published_tubes;
 mod broken_wavs;
 mod demo_audio;
+mod published_tubes;
