@@ -49,9 +49,9 @@ pub struct Crossings {
 /// Crossings of `mark` by the curve through (`levels`, `values`).
 ///
 /// A crossing is counted between two neighboring samples when one is below the mark and the other
-/// at or above it; the level is where the monotone cubic through the samples passes the mark, drawn over the
-/// logarithm of the level. It makes no extrema between samples, so it adds no crossings, and a dip
-/// narrower than the spacing of the levels is not seen.
+/// at or above it; the level is where the monotone cubic through the samples passes the mark, drawn
+/// over the logarithm of the level. It makes no extrema between samples, so it adds no crossings,
+/// and a dip narrower than the spacing of the levels is not seen.
 ///
 /// Source of the slopes: F. N. Fritsch, J. Butland, A method for constructing local monotone
 /// piecewise cubic interpolants, SIAM J. Sci. Stat. Comput. 5 (1984) 300-304, weighted for unequal

@@ -133,15 +133,16 @@ pub fn peak_envelope(
 pub struct Recovery {
     /// RMS of the probe over the last window before the burst.
     pub before_rms: f64,
-    /// Time from the end of the burst to the first window from which on every window's RMS lies within the
-    /// tolerance of `before_rms`; `None` when the take ends before that.
+    /// Time from the end of the burst to the first window from which on every window's RMS lies
+    /// within the tolerance of `before_rms`; `None` when the take ends before that.
     pub time_s: Option<f64>,
     /// Level of the softest window after the burst re `before_rms`, in dB; `None` when it is
     /// silent, or more than 140 dB below the burst.
     pub deepest_db: Option<f64>,
 }
 
-/// Recovery of a probe after a `burst` (a range of samples), within `tolerance_db` (1 dB as a rule).
+/// Recovery of a probe after a `burst` (a range of samples), within `tolerance_db` (1 dB as a
+/// rule).
 ///
 /// The RMS window should hold whole periods of the probe; recovery is told by windows that begin
 /// after the burst, so one that is instant takes no time, and what is shorter than a window

@@ -1,8 +1,8 @@
 //! The first few harmonics of short periods, by direct correlation with kept cosines and sines.
 //!
-//! Ten lines of a period of some hundred samples cost less this way than the whole transform,
-//! above all at lengths with large prime factors such as 383. Samples `m` and `N - m` share a
-//! cosine and, but for its sign, a sine: they are added and subtracted first, which halves the work.
+//! Ten lines of a period of some hundred samples cost less this way than the whole transform, above
+//! all at lengths with large prime factors such as 383. Samples `m` and `N - m` share a cosine and,
+//! but for its sign, a sine: they are added and subtracted first, which halves the work.
 
 use std::cell::RefCell;
 use std::f64::consts::TAU;

@@ -24,9 +24,7 @@ const ROUNDING: f64 = 4.0 * f64::EPSILON;
 #[derive(Clone, Copy, Debug, PartialEq, Error)]
 pub enum HarmonicsError {
     /// Two samples or fewer in a period cannot carry even the fundamental.
-    #[error(
-        "{samples} samples cannot show a tone of {periods} periods; more than two samples a period are needed"
-    )]
+    #[error("{samples} samples for {periods} periods; more than two samples a period are needed")]
     TooShort { samples: usize, periods: usize },
     #[error("sample {index} is not a finite number")]
     NotFinite { index: usize },
@@ -41,8 +39,8 @@ pub enum HarmonicsError {
 /// x(t) = DC + Σ A_n cos(n ω t + φ_n),   C_n = A_n exp(i φ_n) = (2/N) Σ_m x[m] exp(-2πi n k m / N)
 /// ```
 ///
-/// for k periods in N samples. Exact (no window, no leakage) when the waveform repeats after
-/// these samples and holds nothing at or above half the sample rate; whatever stands above that has been
+/// for k periods in N samples. Exact (no window, no leakage) when the waveform repeats after these
+/// samples and holds nothing at or above half the sample rate; whatever stands above that has been
 /// folded down before it came here. Amplitudes are peak, in the unit of the samples.
 #[derive(Clone, Debug)]
 pub struct HarmonicAnalysis {
@@ -275,10 +273,10 @@ fn wrap_degrees(angle: f64) -> f64 {
 
 /// Harmonic figures of a periodic waveform.
 ///
-/// U_n is the RMS (or, in ratios, the peak) amplitude of harmonic n; sums run over n = 2..10.
-/// The definitions follow IEC 60268-3 in kind (distortion as a ratio of harmonics, taken at a stated level
-/// and load); which of the two usual denominators a figure has is in its name, and its number of
-/// harmonics is fixed here. They are those of a periodic waveform without noise.
+/// U_n is the RMS (or, in ratios, the peak) amplitude of harmonic n; sums run over n = 2..10. The
+/// definitions follow IEC 60268-3 in kind (distortion as a ratio of harmonics, taken at a stated
+/// level and load); which of the two usual denominators a figure has is in its name, and its number
+/// of harmonics is fixed here. They are those of a periodic waveform without noise.
 #[derive(Clone, Debug, PartialEq)]
 pub struct HarmonicReport {
     /// U_1 as a peak amplitude, in the unit of the samples.
@@ -311,7 +309,8 @@ pub struct HarmonicReport {
     pub residual_percent: f64,
     /// √(Σ (n/2 U_n)²)/U_1, in percent: weighting of the RMA (US), 1937.
     pub weighted_rma_percent: f64,
-    /// √(Σ (n²/4 U_n)²)/U_1, in percent: weighting of D. E. L. Shorter, Electronic Engineering, 1950.
+    /// √(Σ (n²/4 U_n)²)/U_1, in percent: weighting of D. E. L. Shorter, Electronic Engineering,
+    /// 1950.
     pub weighted_shorter_percent: f64,
 }
 

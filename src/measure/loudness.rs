@@ -41,16 +41,16 @@ pub struct Loudness {
 /// Integrated loudness of `channels` (one slice each, full scale 1.0), and their true peak.
 ///
 /// ```text
-/// L = -0.691 + 10 log10 Σ_channels <y²>,   y: K-weighted samples, over the blocks that pass the gates
+/// L = -0.691 + 10 log10 Σ_channels <y²>,   y: K-weighted samples in blocks that pass the gates
 /// ```
 ///
 /// Blocks of 400 ms every 100 ms; gates at -70 LUFS and at 10 LU below the mean of the blocks above
-/// that. Every channel has weight 1. **A mono signal is one channel**: the same signal in two channels reads 3.01 LU
-/// more, and a player that sends mono to both loudspeakers makes it so. Relations between mono renders do not
-/// depend on it.
+/// that. Every channel has weight 1. **A mono signal is one channel**: the same signal in two
+/// channels reads 3.01 LU more, and a player that sends mono to both loudspeakers makes it so.
+/// Relations between mono renders do not depend on it.
 ///
 /// True peak is the largest of the samples and of 4-fold (from 96 kHz 2-fold, from 192 kHz no)
-/// oversampled values. It may read 0.4 dB low or 0.2 dB high (EBU Tech 3341).
+/// oversampled values; EBU Tech 3341 allows such a meter to read 0.2 dB high or 0.4 dB low.
 ///
 /// Source: ITU-R BS.1770-5 annexes 1 and 2, EBU R 128.
 ///

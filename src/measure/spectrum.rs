@@ -24,7 +24,8 @@ impl Window {
     /// Level below which a line re the fundamental says nothing, in dBc.
     ///
     /// Rectangular: rounding of the transform, -260 dBc at 65 536 samples, a little more for longer
-    /// ones. Blackman-Harris: its side lobes, -180 dBc. Neither counts what the signal itself brings.
+    /// ones. Blackman-Harris: its side lobes, -180 dBc. Neither counts what the signal itself
+    /// brings.
     pub fn floor_dbc(self) -> f64 {
         match self {
             Window::Rectangular => -260.0,
@@ -64,7 +65,7 @@ pub enum SpectrumError {
     NoFundamental { bin: usize },
     /// Two tones whose products of low order fall together cannot be told apart.
     #[error(
-        "products of tones in bins {first} and {second} of {samples} samples fall together or outside the spectrum"
+        "tones in bins {first} and {second} of {samples} samples: products fall together or outside"
     )]
     ProductsCoincide {
         samples: usize,
@@ -148,13 +149,14 @@ fn common_factor(a: usize, b: usize) -> usize {
     if b == 0 { a } else { common_factor(b, a % b) }
 }
 
-/// Worst line from above DC to `limit_hz` that is no harmonic of the tone in bin `bin`, re the fundamental.
+/// Worst line from above DC to `limit_hz` that is no harmonic of the tone in bin `bin`, re the
+/// fundamental.
 ///
 /// `samples` are a settled response to a sine with exactly `bin` periods in them. A harmonic n that
 /// lies above half the rate folds to bin |n k - j N|; as k and N share no factor, folded harmonics
-/// miss the true ones up to orders near N. With [`Window::Rectangular`] anything that does not repeat counts as an alias
-/// too, so the figure errs to the bad side. With [`Window::BlackmanHarris7`] lines within six bins of
-/// a harmonic, or of DC, are not seen.
+/// miss the true ones up to orders near N. With [`Window::Rectangular`] anything that does not
+/// repeat counts as an alias too, so the figure errs to the bad side. With
+/// [`Window::BlackmanHarris7`] lines within six bins of a harmonic, or of DC, are not seen.
 ///
 /// # Errors
 /// [`SpectrumError`].
@@ -259,7 +261,8 @@ mod tests {
             let beside = line % bin;
             prop_assume!(beside > 6 && bin - beside > 6);
             let peak = 10f64.powf(level_dbc / 20.0);
-            let samples: Vec<f64> = with_line(tone(4096, bin, |t| t.sin() + 0.3 + 0.1 * (3.0 * t).sin()), line, peak)
+            let clean = tone(4096, bin, |t| t.sin() + 0.3 + 0.1 * (3.0 * t).sin());
+            let samples: Vec<f64> = with_line(clean, line, peak)
                 .iter()
                 .map(|x| x * scale)
                 .collect();

@@ -21,8 +21,8 @@ pub enum RootError {
 ///
 /// Inverse quadratic interpolation and secant steps, with bisection whenever they gain too little.
 /// A continuous function has a root there; of several, one is found. A jump through zero is found
-/// like a root. The result is within `tolerance` (absolute, in x; zero is allowed) plus four units in the
-/// last place of a change of sign.
+/// like a root. The result is within `tolerance` (absolute, in x; zero is allowed) plus four units
+/// in the last place of a change of sign.
 ///
 /// Source: R. P. Brent, Algorithms for Minimization without Derivatives, 1973, chapter 4.
 ///

@@ -3,3 +3,5 @@
 mod broken_wavs;
 mod demo_audio;
 mod published_tubes;
+mod measure_oracle;
+mod published_measures;
