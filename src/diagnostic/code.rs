@@ -78,5 +78,33 @@ codes! {
     /// A sample that is not a number, or infinite.
     WavNotFinite = "wav-not-finite",
 
+    // -- design and catalog together
+    /// A tube that neither the catalog nor a file knows.
+    UnknownTube = "unknown-tube",
+    /// A transformer label whose figures exclude each other.
+    LabelContradiction = "label-contradiction",
+
     // -- results (warnings)
+    /// A rating is exceeded.
+    RatingExceeded = "rating-exceeded",
+    /// More than the running limit stands at a cold tube.
+    ColdStartVolts = "cold-start-volts",
+    /// A tube rests outside the range its law was fitted over.
+    OutsideFittedRange = "outside-fitted-range",
+    /// A law that rests on figures from memory.
+    FromMemory = "from-memory",
+    /// What the catalog says must be known before trusting a tube.
+    TubeCaution = "tube-caution",
+    /// Something about the transformer had to be assumed.
+    TransformerAssumed = "transformer-assumed",
+    /// Clipping begins with a grid current nobody measured.
+    GridCurrentAssumed = "grid-current-assumed",
+    /// Aliases above the promised level.
+    AliasHigh = "alias-high",
+    /// A steady state was not reached.
+    NotSettled = "not-settled",
+    /// A stage was driven past its solved surface.
+    SurfaceLeft = "surface-left",
+    /// A recording whose level deserves a second look.
+    DiLevel = "di-level",
 }

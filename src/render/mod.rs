@@ -2,6 +2,7 @@
 
 mod kernel;
 mod layout;
+pub mod listening;
 mod model;
 mod network;
 #[cfg(test)]

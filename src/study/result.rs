@@ -3,6 +3,7 @@
 use crate::diagnostic::Code;
 use crate::stage::operating_point::OperatingPoint;
 use crate::stage::ratings::RatingCheck;
+pub use crate::stage::transfer::{PlateDiagram, TransferCurve, TransferPoint};
 use crate::trial::figures::{Alias, Figure, Response, ToneFigures};
 
 /// A finding that the builder must see before any figure.
@@ -36,47 +37,6 @@ pub struct CurveStudy {
     pub transfer: TransferCurve,
     pub diagram: PlateDiagram,
     pub warnings: Vec<Warning>,
-}
-
-/// A stage's output against its drive at the chosen bias: the slice of the surface at rest, seen at 1 kHz.
-#[derive(Clone, Debug, PartialEq)]
-pub struct TransferCurve {
-    pub stage: String,
-    pub points: Vec<TransferPoint>,
-    /// Marks on the curve: (name of the limit, drive in volts). Names: "grid-conduction", "plate-knee", "cutoff", "rest".
-    pub limits: Vec<(String, f64)>,
-    /// Source resistance through which the grid is driven, ohms.
-    pub drive_ohms: f64,
-}
-
-#[derive(Clone, Copy, Debug, PartialEq)]
-pub struct TransferPoint {
-    /// Open-circuit drive re rest, volts.
-    pub drive_v: f64,
-    /// Grid to cathode, volts.
-    pub v_gk: f64,
-    /// Plate re rest, volts.
-    pub plate_v: f64,
-    pub plate_a: f64,
-    pub grid_a: f64,
-    /// Incremental gain re the one at rest (1 at rest).
-    pub relative_gain: f64,
-}
-
-/// Plate curves with load lines.
-#[derive(Clone, Debug, PartialEq)]
-pub struct PlateDiagram {
-    /// Grid volts of each curve and its (plate volts to cathode, plate amperes).
-    pub curves: Vec<(f64, Vec<(f64, f64)>)>,
-    /// Through the operating point, direct and alternating.
-    pub direct_line: Vec<(f64, f64)>,
-    pub alternating_line: Vec<(f64, f64)>,
-    pub operating: (f64, f64),
-    /// Plate dissipation limit as a hyperbola, when the rating is known: watts for all sections.
-    pub dissipation_w: Option<f64>,
-    pub plate_volts_limit: Option<f64>,
-    /// Screen volts to the cathode at which the curves stand.
-    pub screen_volts: Option<f64>,
 }
 
 /// What `forehear render` found, apart from the sound.

@@ -17,6 +17,9 @@ pub fn levels() -> Vec<f64> {
         .collect()
 }
 
+/// The headline tone, in hertz.
+pub const HEADLINE_HZ: f64 = 1000.0;
+
 /// The highest level of [`levels`]: a model must be built for it.
 pub const HIGHEST_LEVEL_V: f64 = 8.0;
 

@@ -2,6 +2,6 @@
 
 mod broken_wavs;
 mod demo_audio;
-mod published_tubes;
 mod measure_oracle;
 mod published_measures;
+mod published_tubes;
