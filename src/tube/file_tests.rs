@@ -175,7 +175,7 @@ fn ratings_and_capacitances_arrive_in_base_units() {
     let range = &tube.fitted_range;
     assert!(range.grid_volts.contains(crate::units::Volts(-7.3)));
     assert!(!range.grid_volts.contains(crate::units::Volts(1.0)));
-    let beam = Catalog::shipped().find("6L6").expect("a shipped tube");
+    let beam = Catalog::shipped().find("6L6-GC").expect("a shipped tube");
     assert_eq!(beam.provenance.ratings.from_memory, ["screen_watts"]);
     assert!(
         beam.caution

@@ -196,17 +196,15 @@ impl PentodeLaw {
         }
 
         // Smooth minimum with the limit line: w = s ln(A/B).
-        let ln_a = space.ln + ln_r - (1.0 + r).ln();
-        let w = k.knee_sharpness * (ln_a - self.ln_limit - 1.5 * vp.ln());
+        let ln_a_over_limit = space.ln + ln_r - self.ln_limit - ((1.0 + r) * vp * vp.sqrt()).ln();
+        let w = k.knee_sharpness * ln_a_over_limit;
+        // Soft is only ever exponentiated, so its absolute precision counts and ln(1 + e) needs no care near zero.
         let e = (-w.abs().min(300.0)).exp();
         let d = 1.0 / (1.0 + e);
-        let (soft, limited) = if w > 0.0 {
-            (w + (1.0 + e).ln(), d)
-        } else {
-            (e.ln_1p(), e * d)
-        };
+        let l = (1.0 + e).ln();
+        let (soft, limited) = if w > 0.0 { (w + l, d) } else { (l, e * d) };
         let free = 1.0 - limited;
-        let ip = a * (-soft * self.inverse_s).exp();
+        let ip = a * (-soft * self.inverse_s).max(-700.0).exp();
         let ip_g = ip * free * a_g;
         let ip_s = ip * free * a_s;
         let ip_p = ip * (free * a_p + limited * 1.5 / vp);

@@ -94,13 +94,22 @@ impl TriodeLaw {
         let i0_g = scale * s.slope;
         let i0_p = scale * (s.slope * self.inverse_mu + s.rest * vp / root * self.inverse_kp);
 
-        // Low-plate factor F = 1 - exp(-q) and its slopes.
+        // Low-plate factor F = 1 - (-q).exp() and its slopes.
         let g = softplus(POSITIVE_GRID_SHARPNESS * vg);
         let inverse_v = 1.0
             / (k.low_plate_volts + k.low_plate_growth * g.value * (1.0 / POSITIVE_GRID_SHARPNESS));
         let q = vp * inverse_v;
-        let f = -(-q).exp_m1();
-        let f_p = (1.0 - f) * inverse_v;
+        let (f, rest) = if q > 40.0 {
+            (1.0, 0.0)
+        } else if q > 1.0 {
+            let rest = (-q).exp();
+            (1.0 - rest, rest)
+        } else {
+            // Close to zero the difference needs all its digits.
+            let f = -(-q).exp_m1();
+            (f, 1.0 - f)
+        };
+        let f_p = rest * inverse_v;
         let f_g = -f_p * q * k.low_plate_growth * g.slope;
         Currents {
             ip: i0 * f,
