@@ -24,7 +24,7 @@ const SHIPPED: &[(&str, &str)] = &[
 /// let catalog = Catalog::shipped();
 /// let tube = catalog.find("ecc83").expect("a shipped tube");
 /// assert_eq!(tube.name, "12AX7");
-/// assert_eq!(catalog.nearest("12AZ7"), Some("12AX7"));
+/// assert_eq!(catalog.nearest("ECC-83"), Some("ECC83"));
 /// ```
 #[derive(Clone, Debug)]
 pub struct Catalog {
