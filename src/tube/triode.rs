@@ -94,7 +94,7 @@ impl TriodeLaw {
         let i0_g = scale * s.slope;
         let i0_p = scale * (s.slope * self.inverse_mu + s.rest * vp / root * self.inverse_kp);
 
-        // Low-plate factor F = 1 - (-q).exp() and its slopes.
+        // Low-plate factor F = 1 - exp(-q) and its slopes.
         let g = softplus(POSITIVE_GRID_SHARPNESS * vg);
         let inverse_v = 1.0
             / (k.low_plate_volts + k.low_plate_growth * g.value * (1.0 / POSITIVE_GRID_SHARPNESS));
