@@ -1,7 +1,8 @@
 //! The `fmt ` chunk: how samples are stored.
 //!
 //! Layout: "Multimedia Programming Interface and Data Specifications 1.0" (IBM and Microsoft, 1991), chapter 3, and for the
-//! extensible form the `WAVEFORMATEXTENSIBLE` structure of `mmreg.h`; both from memory, checked against files of three writers.
+//! extensible form the `WAVEFORMATEXTENSIBLE` structure of `mmreg.h`; both from memory, checked against the odd files in the test
+//! data of SciPy 1.17, whose own reader gives the same values.
 
 use super::fault::WavFault;
 use crate::diagnostic::Code;
