@@ -27,6 +27,76 @@ codes! {
     Syntax = "syntax",
 
     // -- design file
+    /// A format version this program does not read.
+    UnsupportedFormat = "unsupported-format",
+    /// A key the table of keys does not know.
+    UnknownKey = "unknown-key",
+    /// A key that must be given is not.
+    MissingKey = "missing-key",
+    /// A text where a number, list or table is due, or the like.
+    WrongType = "wrong-type",
+    /// A value of another dimension than the key's.
+    WrongUnit = "wrong-unit",
+    /// A text that is no value in component notation.
+    UnreadableValue = "unreadable-value",
+    /// A value outside the key's range.
+    OutOfRange = "out-of-range",
+    /// A word that is none of the key's choices.
+    UnknownWord = "unknown-word",
+    /// Real, but not modeled.
+    NotSupported = "not-supported",
+    /// A name with characters that names cannot have, or a reserved one.
+    InvalidName = "invalid-name",
+    /// Two of a kind with the same name.
+    DuplicateName = "duplicate-name",
+    /// A name that nothing bears.
+    UnknownName = "unknown-name",
+    /// More of a kind than is allowed.
+    TooMany = "too-many",
+    /// Keys that exclude each other.
+    ConflictingKeys = "conflicting-keys",
+    /// A key without effect beside the others given.
+    KeyWithoutEffect = "key-without-effect",
+    /// An override that is not PATH=VALUE.
+    InvalidOverride = "invalid-override",
+    /// A rail that nothing bears the name of.
+    UnknownRail = "unknown-rail",
+    /// Rails that feed each other in a ring.
+    RailCycle = "rail-cycle",
+    /// No rail is fed from the source.
+    NoSourceRail = "no-source-rail",
+    /// Several rails are fed from the source.
+    SeveralSourceRails = "several-source-rails",
+    /// A design without a stage.
+    NoStage = "no-stage",
+    /// Every stage has a plate resistor.
+    NoTransformerStage = "no-transformer-stage",
+    /// Several stages lack a plate resistor.
+    SeveralTransformerStages = "several-transformer-stages",
+    /// A stage follows the one that drives the output transformer.
+    TransformerStageNotLast = "transformer-stage-not-last",
+    /// A pentode without a screen supply.
+    ScreenMissing = "screen-missing",
+    /// A screen supply where no screen is free.
+    ScreenWithoutEffect = "screen-without-effect",
+    /// Neither resistor, pot nor capacitor in a branch.
+    EmptyBranch = "empty-branch",
+    /// A leak returned to a bias that the stage does not have.
+    NoFixedBias = "no-fixed-bias",
+    /// Fixed bias that does not reach the grid.
+    BiasLeakMissing = "bias-leak-missing",
+    /// A grid without a resistive path to ground or bias.
+    GridWithoutDcPath = "grid-without-dc-path",
+    /// No capacitor keeps the previous plate's voltage off the grid.
+    PlateNotBlocked = "plate-not-blocked",
+    /// A gain control that is no pot of the design.
+    UnknownGainControl = "unknown-gain-control",
+    /// A gain control whose name several pots bear.
+    AmbiguousGainControl = "ambiguous-gain-control",
+    /// The secondary in use is none of the taps listed.
+    TapNotListed = "tap-not-listed",
+    /// The lower corner does not lie below the upper one.
+    CornerOrder = "corner-order",
 
     // -- tube file
     /// A tube file of a format this program does not read.

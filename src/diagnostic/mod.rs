@@ -1,8 +1,10 @@
 //! Code, place, hint; many at once.
 
 mod code;
+mod nearest;
 
 pub use code::Code;
+pub use nearest::nearest;
 
 use std::fmt;
 
