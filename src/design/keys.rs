@@ -64,15 +64,30 @@ pub fn key(path: &str) -> Option<&'static Key> {
 }
 
 /// Keys whose path begins with `path`, itself included; all of them for an empty path.
+///
+/// Names may be given, starred or left out: `stage.power.cathode`, `stage.*.cathode` and `stage.cathode` mean the same.
 pub fn keys_under(path: &str) -> Vec<&'static Key> {
-    let wanted = path.split('.').count();
-    keys()
-        .iter()
-        .filter(|key| {
-            let depth = key.path.split('.').count();
-            path.is_empty() || (depth >= wanted && matches(&first_segments(key.path, wanted), path))
-        })
-        .collect()
+    if path.is_empty() {
+        return keys().iter().collect();
+    }
+    let under = |named: bool| {
+        let begins = |key: &&'static Key| {
+            let mut due = key
+                .path
+                .split('.')
+                .filter(|segment| named || *segment != "*");
+            path.split('.')
+                .all(|given| due.next().is_some_and(|due| due == "*" || due == given))
+        };
+        keys().iter().filter(begins).collect::<Vec<_>>()
+    };
+    // Without names first, or `cathode` in `stage.cathode` would be taken for a name.
+    let unnamed = under(false);
+    if unnamed.is_empty() {
+        under(true)
+    } else {
+        unnamed
+    }
 }
 
 /// Names of the keys that may stand directly in the table `pattern` (empty: at the top).
@@ -101,10 +116,6 @@ fn matches(pattern: &str, path: &str) -> bool {
             .next()
             .is_some_and(|segment| due == "*" || segment == due)
     }) && given.next().is_none()
-}
-
-fn first_segments(path: &str, count: usize) -> String {
-    path.split('.').take(count).collect::<Vec<_>>().join(".")
 }
 
 impl Key {
@@ -153,6 +164,90 @@ impl Key {
                 }
             }
             Kind::Flag | Kind::Count | Kind::Quantities(_) => format!("{name} = {}", self.example),
+        }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::units::notation;
+
+    #[test]
+    fn every_path_stands_once_and_under_a_table_of_its_own() {
+        for (index, row) in keys().iter().enumerate() {
+            assert!(
+                keys()[..index].iter().all(|other| other.path != row.path),
+                "{}",
+                row.path
+            );
+            let Some((parent, _)) = row.path.rsplit_once('.') else {
+                continue;
+            };
+            let (parent, due) = match parent.strip_suffix(".*") {
+                Some(list) => (list, Kind::Tables),
+                None => (parent, Kind::Table),
+            };
+            assert_eq!(key(parent).map(|key| key.kind), Some(due), "{}", row.path);
+        }
+    }
+
+    #[test]
+    fn every_example_and_default_is_valid_under_its_own_row() {
+        for row in keys() {
+            assert!(!row.help.is_empty());
+            for text in [Some(row.example), row.default].into_iter().flatten() {
+                match row.kind {
+                    Kind::Quantity(unit) => {
+                        let value = notation::parse(text, unit)
+                            .unwrap_or_else(|fault| panic!("{}: {fault}", row.path));
+                        let (low, high) = row.range.expect("a quantity has a range");
+                        assert!((low..=high).contains(&value), "{}: {text}", row.path);
+                    }
+                    Kind::Word(words) => assert!(words.contains(&text), "{}", row.path),
+                    Kind::Count => assert!(text.parse::<u32>().is_ok(), "{}", row.path),
+                    Kind::Flag => assert!(["true", "false"].contains(&text), "{}", row.path),
+                    Kind::Name => assert!(!text.is_empty(), "{}", row.path),
+                    Kind::Text | Kind::Quantities(_) | Kind::Table | Kind::Tables => {}
+                }
+            }
+        }
+    }
+
+    #[test]
+    fn words_for_a_required_key_have_no_default() {
+        for row in keys() {
+            assert!(
+                row.need != Need::Required || row.default.is_none(),
+                "{}",
+                row.path
+            );
+        }
+    }
+
+    #[test]
+    fn names_match_the_star_and_the_star_may_be_left_out() {
+        let path = key("stage.power.cathode.resistor").map(|key| key.path);
+        assert_eq!(path, Some("stage.*.cathode.resistor"));
+        assert_eq!(key("stage.power.cathode"), key("stage.*.cathode"));
+        assert_eq!(key("stage.cathode.resistor"), None);
+        assert_eq!(keys_under("stage.power.cathode").len(), 6);
+        assert_eq!(keys_under("stage.cathode").len(), 6);
+        assert_eq!(keys_under("supply.rail.capacitor").len(), 1);
+        assert_eq!(keys_under("").len(), keys().len());
+        assert!(keys_under("nowhere").is_empty());
+    }
+
+    #[test]
+    fn what_is_not_supported_is_no_key() {
+        for (pattern, words, _) in table::NOT_SUPPORTED {
+            for word in *words {
+                let in_table = names_in(pattern).any(|name| name == *word);
+                let is_choice = key(pattern).is_some_and(
+                    |key| matches!(key.kind, Kind::Word(choices) if choices.contains(word)),
+                );
+                assert!(!in_table && !is_choice, "{pattern} {word}");
+            }
         }
     }
 }

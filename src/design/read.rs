@@ -213,3 +213,6 @@ fn is_pot(element: &Element) -> bool {
             | Branch::InParallel(Resistive::Rheostat(_), _)
     )
 }
+
+#[cfg(test)]
+mod tests;

@@ -23,13 +23,18 @@ impl Findings {
         message: impl Into<String>,
         hint: Option<String>,
     ) {
-        self.faults.borrow_mut().push(Diagnostic {
+        let fault = Diagnostic {
             code,
             path: path.to_owned(),
             place,
             message: message.into(),
             hint,
-        });
+        };
+        let mut faults = self.faults.borrow_mut();
+        // A value that is read twice has one fault.
+        if !faults.contains(&fault) {
+            faults.push(fault);
+        }
     }
 
     /// The faults, if any, else the places.
@@ -127,8 +132,9 @@ impl<'a> Section<'a> {
             );
         }
         let mut taken: Vec<String> = Vec::new();
+        // Some beyond the limit are read too, so that its fault brings no others; not all, since a text can hold any number.
         let mut sections = Vec::new();
-        for (index, node) in nodes.iter().take(most).enumerate() {
+        for (index, node) in nodes.iter().take(4 * most).enumerate() {
             let Some(table) = node.table() else {
                 self.wrong_type(
                     key,
@@ -246,6 +252,7 @@ impl<'a> Section<'a> {
     /// Notes that `key`, if given, does nothing here.
     pub fn without_effect(&self, key: &str, why: &str, hint: Option<&str>) {
         if self.is_given(key) {
+            self.glance(&[key]);
             let message = format!("`{key}` has no effect: {why}");
             self.fault(
                 Code::KeyWithoutEffect,
@@ -258,6 +265,7 @@ impl<'a> Section<'a> {
 
     /// Notes that at most one of two given keys can hold; points at the second.
     pub fn conflict(&self, first: &str, second: &str, hint: &str) {
+        self.glance(&[first, second]);
         let message = format!("`{first}` and `{second}` exclude each other");
         self.fault(
             Code::ConflictingKeys,
@@ -265,6 +273,21 @@ impl<'a> Section<'a> {
             message,
             Some(hint.to_owned()),
         );
+    }
+
+    /// Notes the faults of what stands under `keys`, where nothing else will read it.
+    pub fn glance(&self, keys: &[&str]) {
+        for key in keys.iter().filter(|key| self.is_given(key)) {
+            match self.row(key).kind {
+                Kind::Quantity(_) => drop(self.quantity(key)),
+                Kind::Quantities(_) => drop(self.quantities(key)),
+                Kind::Word(_) => drop(self.word(key)),
+                Kind::Text | Kind::Name => drop(self.text(key)),
+                Kind::Flag => drop(self.flag(key)),
+                Kind::Count => drop(self.count(key)),
+                Kind::Table | Kind::Tables => {}
+            }
+        }
     }
 
     /// A quantity in its base unit, if given.

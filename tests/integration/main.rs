@@ -5,3 +5,4 @@ mod demo_audio;
 mod measure_oracle;
 mod published_measures;
 mod published_tubes;
+mod broken_designs;

@@ -133,6 +133,7 @@ fn coil(section: &Section<'_>) -> Coil {
                 lossy,
                 "give either `le`, or `coil_at_1khz` with `coil_exponent`",
             );
+            section.glance(&["coil_at_1khz", "coil_exponent"]);
             Coil::Inductance(Henries(1e-3))
         }
         (Some(inductance), None) => Coil::Inductance(Henries(inductance)),

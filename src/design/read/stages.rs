@@ -121,6 +121,7 @@ fn cathode(section: &Section<'_>) -> Cathode {
         (Some(resistor), diode) => {
             if let Some(diode) = diode {
                 section.conflict("resistor", diode, "a diode stands in place of the resistor");
+                section.glance(&["diode_volts", "diode_resistance"]);
             }
             CathodeBias::Resistor(Ohms(resistor))
         }

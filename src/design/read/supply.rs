@@ -41,7 +41,10 @@ fn source(section: &Section<'_>) -> Source {
     let plain = PLAIN.into_iter().find(|key| section.is_given(key));
     let built = BUILT.into_iter().find(|key| section.is_given(key));
     match (plain, built) {
-        (Some(plain), Some(built)) => section.conflict(plain, built, HINT),
+        (Some(plain), Some(built)) => {
+            section.conflict(plain, built, HINT);
+            section.glance(&BUILT);
+        }
         (None, None) if section.is_present() => {
             section.missing("volts", Some("or `secondary_rms` with its companions"));
         }
@@ -121,8 +124,8 @@ fn rails(section: &Section<'_>) -> (Vec<Rail>, Vec<String>) {
         .iter()
         .map(|(name, section)| rail(name, section, &names))
         .collect();
-    let ring = report_rings(&sections, &found);
-    report_sources(section, &sections, &found, ring);
+    report_rings(&sections, &found);
+    report_sources(section, &sections, &found);
     let order = order(&found);
     let rank = |index: usize| order.iter().position(|&other| other == index).unwrap_or(0);
     let rails = order.iter().map(|&index| {
@@ -172,7 +175,8 @@ fn rail(name: &str, section: &Section<'_>, names: &[String]) -> Found {
             section.without_effect(key, why, hint);
         }
     }
-    let between_rails = from != From::Source && section.is_given("from");
+    // Where the feed is not known, what belongs before the rail is not known either.
+    let between_rails = matches!(from, From::Rail(_));
     let series = match (section.quantity("resistor"), section.quantity("choke")) {
         (Some(resistor), choke) => {
             if choke.is_some() && between_rails {
@@ -206,8 +210,8 @@ fn rail(name: &str, section: &Section<'_>, names: &[String]) -> Found {
     }
 }
 
-/// Notes each ring of rails once; true when there is one.
-fn report_rings(sections: &[(String, Section<'_>)], found: &[Found]) -> bool {
+/// Notes each ring of rails once.
+fn report_rings(sections: &[(String, Section<'_>)], found: &[Found]) {
     let mut in_a_ring = vec![false; found.len()];
     for start in 0..found.len() {
         let mut ring = vec![start];
@@ -241,19 +245,13 @@ fn report_rings(sections: &[(String, Section<'_>)], found: &[Found]) -> bool {
             .1
             .fault(Code::RailCycle, "from", message, hint);
     }
-    in_a_ring.contains(&true)
 }
 
-fn report_sources(
-    section: &Section<'_>,
-    sections: &[(String, Section<'_>)],
-    found: &[Found],
-    ring: bool,
-) {
+fn report_sources(section: &Section<'_>, sections: &[(String, Section<'_>)], found: &[Found]) {
     let mut from_source = (0..found.len()).filter(|&index| found[index].from == From::Source);
     let Some(first) = from_source.next() else {
         // Where a feed is not known, it may have been meant for the source.
-        if !found.is_empty() && !ring && !found.iter().any(|rail| rail.from == From::Nowhere) {
+        if !found.is_empty() && !found.iter().any(|rail| rail.from == From::Nowhere) {
             let hint = Some("give the first rail from = \"source\"".to_owned());
             section.fault(
                 Code::NoSourceRail,
