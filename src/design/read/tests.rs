@@ -41,7 +41,7 @@ fn the_first_shipped_design_comes_out_as_it_is_written() {
     assert_eq!(design.control.settings, [2.0, 5.0, 10.0]);
     assert_eq!(design.control.test_level, VoltsPeak(0.2));
     assert_eq!(design.jack_source_resistance, Ohms(0.0));
-    let volts = Volts(290.0);
+    let volts = Volts(265.0);
     let resistance = Ohms(150.0);
     assert_eq!(design.supply.source, Source::Plain { volts, resistance });
     let feeds: Vec<_> = design.supply.rails.iter().map(|rail| rail.from).collect();
@@ -135,7 +135,7 @@ fn rails_come_out_parents_first_whatever_their_order_in_the_file() {
 
 #[test]
 fn a_bare_number_stands_in_the_base_unit() {
-    let design = replaced("volts = \"290V\"", "volts = 290");
+    let design = replaced("volts = \"265V\"", "volts = 265");
     assert_eq!(design, with(&[]));
     let design = replaced("capacitor = \"47u\"", "capacitor = 47e-6");
     assert_eq!(design, with(&[]));
@@ -206,7 +206,7 @@ fn a_rectified_winding_is_read_with_each_rectifier() {
         ),
     ] {
         let design = replaced(
-            "volts = \"290V\"\nresistance = \"150R\"",
+            "volts = \"265V\"\nresistance = \"150R\"",
             &format!("secondary_rms = \"230V\"\nwinding_resistance = \"110R\"\nrectifier = {word}"),
         );
         let expected = Source::Rectified {
