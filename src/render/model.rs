@@ -142,6 +142,15 @@ impl Model {
         Ok(model)
     }
 
+    /// Solves the surfaces alone: what a change of bias costs.
+    pub fn surfaces_only(amp: &Amplifier, rate: f64, input_peak: f64) -> Vec<Surface> {
+        let h = 1.0 / rate;
+        let networks = cut(&amp.wiring.net, h, &[amp.wiring.load_top]);
+        (0..amp.devices.len())
+            .map(|k| build_surface(amp, &networks, k, h, input_peak, Fineness::default()))
+            .collect()
+    }
+
     /// What counts as one unit of each state: a volt on a capacitor, a milliampere in an inductor.
     pub fn state_scales(&self) -> Vec<f64> {
         self.scales.clone()
