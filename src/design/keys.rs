@@ -138,14 +138,14 @@ impl Key {
     pub fn kind_text(&self) -> String {
         match self.kind {
             Kind::Table => "a table".to_owned(),
-            Kind::Tables => "tables, one for each".to_owned(),
+            Kind::Tables => "a list of tables".to_owned(),
             Kind::Text => "a text".to_owned(),
             Kind::Name => "a name".to_owned(),
             Kind::Word(words) => format!("one of {}", words.join(", ")),
             Kind::Flag => "true or false".to_owned(),
             Kind::Count => "a whole number".to_owned(),
             Kind::Quantity(unit) => unit.noun().to_owned(),
-            Kind::Quantities(unit) => format!("a list, each {}", unit.noun()),
+            Kind::Quantities(unit) => format!("a list (each entry {})", unit.noun()),
         }
     }
 

@@ -1,5 +1,6 @@
 //! Text in, a valid [`Design`] and its map of places out. Knows tubes by name only.
 
+mod findings;
 pub mod keys;
 mod model;
 mod overrides;

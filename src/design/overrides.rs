@@ -1,9 +1,11 @@
 //! `PATH=VALUE`: one value of a design replaced or added.
 
+use super::findings::Findings;
 use super::keys::{self, Kind};
-use super::section::{Findings, clipped, refusal, unquoted};
+use super::section::{refusal, unquoted};
 use super::tree::{Node, Table, Value};
 use crate::diagnostic::{Code, Place, nearest};
+use crate::units::notation::clipped;
 
 /// Sets one value of `design`, or notes why that cannot be done.
 ///

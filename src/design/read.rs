@@ -5,13 +5,15 @@ mod ladder;
 mod stages;
 mod supply;
 
+use super::findings::Findings;
 use super::model::{Control, Design, Element, ElementKind, PotPlace};
 use super::overrides;
 use super::places::Places;
-use super::section::{Findings, Section};
+use super::section::Section;
 use super::tree;
 use crate::diagnostic::{Code, Diagnostic, Place, nearest};
-use crate::units::{Ohms, VoltsPeak};
+use crate::units::notation::clipped;
+use crate::units::{Ohms, Unit, VoltsPeak};
 
 /// Version of the design format that is read.
 const FORMAT: u32 = 1;
@@ -69,7 +71,10 @@ fn check_format(table: &tree::Table) -> Result<(), Vec<Diagnostic>> {
         let place = table
             .get("format")
             .map_or(Place::Whole, |node| node.place.clone());
-        let message = format!("design format {version} is not read here");
+        let message = format!(
+            "design format {} is not read here",
+            Unit::Plain.format(*version)
+        );
         let hint = Some(format!("this program reads format {FORMAT}"));
         findings.fault(Code::UnsupportedFormat, "format", place, message, hint);
     }
@@ -140,7 +145,8 @@ fn control(section: &Section<'_>, stages: &[super::model::Stage]) -> Control {
 /// The pot that `control.gain` names.
 fn gain_control(section: &Section<'_>, stages: &[super::model::Stage]) -> Option<PotPlace> {
     let wanted = section.text("gain");
-    if !section.is_sound("gain") {
+    // Without any stage that alone is the fault, and noted.
+    if !section.is_sound("gain") || stages.is_empty() {
         return None;
     }
     let mut pots = Vec::new();
@@ -182,7 +188,7 @@ fn gain_control(section: &Section<'_>, stages: &[super::model::Stage]) -> Option
                     format!("the design's pots are {}", names.join(", "))
                 }
             };
-            let message = format!("no pot is named `{}`", super::section::clipped(&wanted));
+            let message = format!("no pot is named `{}`", clipped(&wanted));
             section.fault(Code::UnknownGainControl, "gain", message, Some(hint));
             None
         }

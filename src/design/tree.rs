@@ -103,7 +103,9 @@ pub(super) fn parse(text: &str) -> Result<Table, Vec<Diagnostic>> {
             path: String::new(),
             place: error.span().map_or(Place::Whole, |span| within(text, span)),
             message: format!("not valid TOML: {}", error.message()),
-            hint: None,
+            // The words of a library: only the hint depends on them.
+            hint: (error.message().contains("must be quoted"))
+                .then(|| "values with a unit stand in quotes, such as \"4K7\"".to_owned()),
         })
         .collect();
     faults.sort_by_key(|fault| match &fault.place {

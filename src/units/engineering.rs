@@ -18,13 +18,17 @@ fn to_four_digits(value: f64) -> f64 {
 
 /// Value with an SI prefix and its unit, four significant digits at most: `4.7 kΩ`, `22 nF`, `23.4 mA`.
 ///
-/// Farads go no higher than micro (`2200 µF`), as the trade writes them.
+/// Farads go no higher than micro below 0.1 F (`2200 µF`), as the trade writes them.
 pub fn engineering(value: f64, symbol: &str) -> String {
     const PREFIXES: [&str; 8] = ["p", "n", "µ", "m", "", "k", "M", "G"];
     const UNITY: i32 = 4;
-    let highest = if symbol == "F" { -2 } else { 3 };
     // Rounded first, so that 999.96 Ω becomes 1 kΩ and not 1000 Ω.
     let rounded = to_four_digits(value);
+    let highest = match symbol {
+        "F" if rounded.abs() < 0.1 => -2,
+        "F" => 0,
+        _ => 3,
+    };
     let thousands = if rounded == 0.0 || !rounded.is_finite() {
         0
     } else {
@@ -64,6 +68,8 @@ mod tests {
             (0.001, "A", "1 mA"),
             (47e-6, "F", "47 µF"),
             (2200e-6, "F", "2200 µF"),
+            (0.1, "F", "100 mF"),
+            (22.0, "F", "22 F"),
             (0.5e-12, "F", "0.5 pF"),
             (123_456.0, "Ω", "123.5 kΩ"),
             (4.7, "", "4.7"),

@@ -58,7 +58,7 @@ pub enum Problem {
 impl NotationError {
     fn sentence(&self) -> String {
         let due = self.unit.noun();
-        let found = shortened(&self.found);
+        let found = clipped(&self.found);
         match &self.problem {
             Problem::Empty => format!("nothing is written where {due} is due"),
             Problem::NotANumber => format!("`{found}` is not {due}"),
@@ -73,7 +73,7 @@ impl NotationError {
             Problem::UnknownSuffix(suffix) => {
                 format!(
                     "`{found}` is not {due}: `{}` says nothing here",
-                    shortened(suffix)
+                    clipped(suffix)
                 )
             }
         }
@@ -94,8 +94,8 @@ impl NotationError {
     }
 }
 
-/// First forty characters, on one line.
-fn shortened(text: &str) -> String {
+/// First forty characters of what somebody wrote, on one line, to quote it.
+pub fn clipped(text: &str) -> String {
     let mut short: String = text.chars().take(40).flat_map(char::escape_debug).collect();
     if text.chars().nth(40).is_some() {
         short.push('…');

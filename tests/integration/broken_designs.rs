@@ -431,3 +431,16 @@ proptest! {
         read_safely(roomy_design(), &sets);
     }
 }
+
+/// The most faults that are told keep a file of nothing but faults from taking the square of its length.
+#[test]
+fn a_long_file_of_nothing_but_faults_is_answered_soon() {
+    let keys: String = (0..40_000).map(|n| format!("resistor{n} = 1\n")).collect();
+    let stages = "[[stage]]\n[[stage.input]]\n".repeat(5_000);
+    let start = std::time::Instant::now();
+    let faults = design::read(&format!("{keys}{stages}"), &[]).expect_err("faults");
+    assert!(faults.len() >= 100, "{}", faults.len());
+    // Measured: 2.1 s unoptimized on a busy core; the limit only tells linear from quadratic.
+    let seconds = start.elapsed().as_secs_f64();
+    assert!(seconds < 20.0, "{seconds} s");
+}

@@ -13,12 +13,12 @@ pub(super) fn transformer(section: &Section<'_>) -> Transformer {
     let shunt_capacitance = section.quantity("shunt_capacitance").map(Farads);
     if section.is_present() {
         if low_corner.is_none() && primary_inductance.is_none() {
-            section.missing("low_corner", Some("or `primary_inductance`"));
+            section.missing("low_corner", Some("or give `primary_inductance`"));
         }
         if high_corner.is_none() && (leakage_inductance.is_none() || shunt_capacitance.is_none()) {
             section.missing(
                 "high_corner",
-                Some("or both `leakage_inductance` and `shunt_capacitance`"),
+                Some("or give both `leakage_inductance` and `shunt_capacitance`"),
             );
         }
     }
@@ -28,7 +28,12 @@ pub(super) fn transformer(section: &Section<'_>) -> Transformer {
         && section.is_sound("high_corner")
     {
         let message = format!("the lower corner, {low}, does not lie below the upper one, {high}");
-        section.fault(Code::CornerOrder, "low_corner", message, None);
+        section.fault(
+            Code::CornerOrder,
+            "low_corner",
+            message,
+            Some("exchange them?".to_owned()),
+        );
     }
     let primary = Ohms(section.due("primary", None));
     let primary_resistance = section.quantity("primary_resistance").map(Ohms);
@@ -138,11 +143,17 @@ fn coil(section: &Section<'_>) -> Coil {
         }
         (Some(inductance), None) => Coil::Inductance(Henries(inductance)),
         (None, Some(_)) => Coil::Lossy {
-            at_1khz: Ohms(section.due("coil_at_1khz", Some("beside `coil_exponent`"))),
-            exponent: section.due("coil_exponent", Some("beside `coil_at_1khz`")),
+            at_1khz: Ohms(section.due(
+                "coil_at_1khz",
+                Some("`coil_at_1khz` and `coil_exponent` go together"),
+            )),
+            exponent: section.due(
+                "coil_exponent",
+                Some("`coil_at_1khz` and `coil_exponent` go together"),
+            ),
         },
         (None, None) => {
-            section.missing("le", Some("or `coil_at_1khz` with `coil_exponent`"));
+            section.missing("le", Some("or give `coil_at_1khz` with `coil_exponent`"));
             Coil::Inductance(Henries(1e-3))
         }
     }
@@ -169,7 +180,7 @@ fn electrical_q(section: &Section<'_>, qms: f64) -> f64 {
             qts
         }
         (None, None) => {
-            section.missing("qes", Some("or `qts`"));
+            section.missing("qes", Some("or give `qts`"));
             1.0
         }
     }

@@ -57,7 +57,7 @@ fn divider(section: &Section<'_>) -> ElementKind {
     section.without_effect("wired", "a divider is a pot alone", None);
     section.without_effect("to", "a divider's lower end is at ground", None);
     ElementKind::Divider {
-        pot: pot(section, section.due("pot", Some("in a divider"))),
+        pot: pot(section, section.due("pot", Some("a divider is a pot"))),
         bright: section.quantity("bright").map(Farads),
     }
 }
@@ -89,7 +89,7 @@ fn branch(section: &Section<'_>) -> Branch {
             Some("parallel") => Branch::InParallel(resistive, capacitor),
             Some(_) => Branch::InSeries(resistive, capacitor),
             None => {
-                section.missing("wired", Some("beside a resistive part and a capacitor"));
+                section.missing("wired", Some("the branch has two parts"));
                 Branch::InSeries(resistive, capacitor)
             }
         },
@@ -99,6 +99,12 @@ fn branch(section: &Section<'_>) -> Branch {
                 (Some(resistive), _) => Branch::Resistive(resistive),
                 (None, Some(capacitor)) => Branch::Capacitor(capacitor),
                 (None, None) => {
+                    if ["resistor", "pot", "capacitor"]
+                        .iter()
+                        .any(|key| section.is_meant(key))
+                    {
+                        return Branch::Resistive(Resistive::Fixed(Ohms(1.0)));
+                    }
                     let hint = Some(
                         "give it a `resistor`, a `pot`, a `capacitor`, or one of the first two and a capacitor",
                     );

@@ -79,7 +79,7 @@ fn plate_resistor(plate: &Section<'_>) -> Option<Ohms> {
 
 /// Exactly the last stage drives the transformer, that is, has no plate resistor.
 fn check_transformer_stage(plates: &[Section<'_>]) {
-    let drives = |plate: &&Section<'_>| plate.is_present() && !plate.is_given("resistor");
+    let drives = |plate: &&Section<'_>| plate.is_present() && !plate.is_meant("resistor");
     let Some((last, before)) = plates.split_last() else {
         return;
     };
@@ -126,8 +126,14 @@ fn cathode(section: &Section<'_>) -> Cathode {
             CathodeBias::Resistor(Ohms(resistor))
         }
         (None, Some(_)) => CathodeBias::Diode {
-            volts: Volts(section.due("diode_volts", Some("beside `diode_resistance`"))),
-            resistance: Ohms(section.due("diode_resistance", Some("beside `diode_volts`"))),
+            volts: Volts(section.due(
+                "diode_volts",
+                Some("`diode_volts` and `diode_resistance` go together"),
+            )),
+            resistance: Ohms(section.due(
+                "diode_resistance",
+                Some("`diode_volts` and `diode_resistance` go together"),
+            )),
         },
         (None, None) => {
             let hint = Some("give the cathode a `resistor` or `diode_volts`");

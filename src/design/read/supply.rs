@@ -1,9 +1,10 @@
 //! The supply and its rails.
 
 use super::super::model::{Rail, RailFeed, Rectifier, Source, Supply};
-use super::super::section::{Section, clipped};
+use super::super::section::Section;
 use super::MOST_RAILS;
 use crate::diagnostic::{Code, nearest};
+use crate::units::notation::clipped;
 use crate::units::{Farads, Henries, Ohms, Volts, VoltsRms};
 
 /// Names of the rails, in the order of [`Supply::rails`].
@@ -17,7 +18,10 @@ impl RailNames {
             return 0;
         }
         position(&self.0, &wanted).unwrap_or_else(|| {
-            unknown(section, key, &wanted, &self.0);
+            // Without any rail that alone is the fault, and noted.
+            if !self.0.is_empty() {
+                unknown(section, key, &wanted, &self.0);
+            }
             0
         })
     }
@@ -46,7 +50,7 @@ fn source(section: &Section<'_>) -> Source {
             section.glance(&BUILT);
         }
         (None, None) if section.is_present() => {
-            section.missing("volts", Some("or `secondary_rms` with its companions"));
+            section.missing("volts", Some("or give `secondary_rms` with its companions"));
         }
         _ => {}
     }
@@ -55,7 +59,7 @@ fn source(section: &Section<'_>) -> Source {
         let complete = built.is_none() && plain.is_some();
         let value = |key| {
             if complete {
-                section.due(key, Some("beside its companion"))
+                section.due(key, Some("`volts` and `resistance` go together"))
             } else {
                 section.quantity(key).unwrap_or(1.0)
             }
@@ -65,7 +69,7 @@ fn source(section: &Section<'_>) -> Source {
             resistance: Ohms(value("resistance")),
         };
     }
-    let why = Some("beside the others of a rectified winding");
+    let why = Some("`secondary_rms`, `winding_resistance` and `rectifier` go together");
     let secondary = VoltsRms(section.due("secondary_rms", why));
     let winding_resistance = Ohms(section.due("winding_resistance", why));
     let word = section.word("rectifier");
@@ -74,7 +78,7 @@ fn source(section: &Section<'_>) -> Source {
     }
     let rectifier = match word {
         Some("tube-full-wave") => Rectifier::TubeFullWave {
-            perveance: section.due("rectifier_perveance", Some("for a tube rectifier")),
+            perveance: section.due("rectifier_perveance", Some("a tube rectifier needs it")),
         },
         other => {
             if section.is_sound("rectifier") {
@@ -192,11 +196,11 @@ fn rail(name: &str, section: &Section<'_>, names: &[String]) -> Found {
         }
         (None, Some(choke)) if between_rails => Series::Choke(
             Henries(choke),
-            Ohms(section.due("choke_resistance", Some("beside `choke`"))),
+            Ohms(section.due("choke_resistance", Some("every choke has one"))),
         ),
         _ => {
             if between_rails {
-                section.missing("resistor", Some("or a `choke`"));
+                section.missing("resistor", Some("or give a `choke`"));
                 section.without_effect("choke_resistance", "the rail has no `choke`", None);
             }
             Series::Resistor(Ohms(1.0))
@@ -305,7 +309,6 @@ fn unknown(section: &Section<'_>, key: &str, wanted: &str, names: &[String]) {
     let source = (key == "from").then_some("source");
     let hint = match nearest(wanted, known.iter().copied().chain(source)) {
         Some(near) => format!("did you mean `{near}`?"),
-        None if known.is_empty() => "the supply has no rails".to_owned(),
         None => format!("the rails are {}", known.join(", ")),
     };
     section.fault(
