@@ -313,10 +313,10 @@ fn discretize(
             return volts.row(row).iter().copied().collect();
         }
         let mut form = vec![0.0; width];
-        if n != GROUND {
-            if let Some((col, factor)) = held(n) {
-                form[col] = factor;
-            }
+        if n != GROUND
+            && let Some((col, factor)) = held(n)
+        {
+            form[col] = factor;
         }
         form
     };

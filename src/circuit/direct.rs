@@ -240,8 +240,8 @@ impl<'a> System<'a> {
                     };
                     f[row] += sign * s.i[e];
                     if let Some(j) = jacobian.as_deref_mut() {
-                        for c in 0..3 {
-                            if let Some(col) = self.index[electrodes[c]] {
+                        for (c, electrode) in electrodes.into_iter().enumerate() {
+                            if let Some(col) = self.index[electrode] {
                                 j[(row, col)] += sign * s.d[e][c];
                             }
                             if let Some(col) = self.index[d.cathode] {

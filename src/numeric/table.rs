@@ -2,14 +2,15 @@
 
 /// A bicubic Hermite table on a uniform grid: value and slopes are continuous across cells.
 ///
-/// Each grid point holds, for each of `N` quantities, value, slope over x, slope over y and cross slope,
-/// scaled to cell units. Outside its rectangle the table goes on as a straight line.
+/// Built from value, slope over x, slope over y and cross slope at every grid point; kept as the sixteen
+/// coefficients of each cell's bicubic, those of one power of y side by side. Outside its rectangle the
+/// table goes on as a straight line.
 #[derive(Clone, Debug)]
 pub struct Table<const N: usize> {
     pub x: Axis,
     pub y: Axis,
-    /// `[point][quantity] = [f, f_x, f_y, f_xy]`, y running fastest.
-    points: Vec<[[f64; 4]; N]>,
+    /// `[cell][quantity][power of y][power of x]` in cell units, y running fastest.
+    cells: Vec<[[[f64; 4]; 4]; N]>,
 }
 
 /// A uniform axis of `cells` cells.
@@ -75,46 +76,59 @@ pub struct Sample {
 /// A point of the table found once and used for several quantities.
 #[derive(Clone, Copy, Debug)]
 pub struct Spot {
-    corner: usize,
-    bx: [f64; 4],
-    by: [f64; 4],
-    ox: f64,
-    oy: f64,
+    cell: usize,
     tx: f64,
     ty: f64,
+    /// Distances outside the rectangle, in cells.
+    ox: f64,
+    oy: f64,
 }
 
-#[inline(always)]
-fn basis(t: f64) -> [f64; 4] {
-    let t2 = t * t;
-    let t3 = t2 * t;
-    let h1 = 3.0 * t2 - 2.0 * t3;
-    [1.0 - h1, h1, t3 - 2.0 * t2 + t, t3 - t2]
-}
-
-#[inline(always)]
-fn basis_slope(t: f64) -> [f64; 4] {
-    let t2 = t * t;
-    let d = 6.0 * (t - t2);
-    [-d, d, 3.0 * t2 - 4.0 * t + 1.0, 3.0 * t2 - 2.0 * t]
+/// Values and slopes at both ends of a unit interval to the coefficients of the cubic through them.
+fn cubic([f0, f1, d0, d1]: [f64; 4]) -> [f64; 4] {
+    [
+        f0,
+        d0,
+        3.0 * (f1 - f0) - 2.0 * d0 - d1,
+        2.0 * (f0 - f1) + d0 + d1,
+    ]
 }
 
 impl<const N: usize> Table<N> {
     /// Builds the table from `[f, f_x, f_y, f_xy]` (per unit) at every grid point, y running fastest.
-    pub fn new(x: Axis, y: Axis, mut points: Vec<[[f64; 4]; N]>) -> Table<N> {
+    pub fn new(x: Axis, y: Axis, points: &[[[f64; 4]; N]]) -> Table<N> {
         assert_eq!(
             points.len(),
             (x.cells + 1) * (y.cells + 1),
             "one entry per grid point"
         );
-        for p in &mut points {
-            for q in p {
-                q[1] *= x.cell;
-                q[2] *= y.cell;
-                q[3] *= x.cell * y.cell;
+        let stride = y.cells + 1;
+        let mut cells = Vec::with_capacity(x.cells * y.cells);
+        for kx in 0..x.cells {
+            for ky in 0..y.cells {
+                let corner = kx * stride + ky;
+                let (p00, p01) = (&points[corner], &points[corner + 1]);
+                let (p10, p11) = (&points[corner + stride], &points[corner + stride + 1]);
+                cells.push(std::array::from_fn(|q| {
+                    let (a, b, c, d) = (&p00[q], &p01[q], &p10[q], &p11[q]);
+                    // Along x first: coefficients of value and of y slope at either end of y.
+                    let value_low = cubic([a[0], c[0], a[1] * x.cell, c[1] * x.cell]);
+                    let value_high = cubic([b[0], d[0], b[1] * x.cell, d[1] * x.cell]);
+                    let slope_low = cubic([a[2], c[2], a[3] * x.cell, c[3] * x.cell]);
+                    let slope_high = cubic([b[2], d[2], b[3] * x.cell, d[3] * x.cell]);
+                    let by_x: [[f64; 4]; 4] = std::array::from_fn(|i| {
+                        cubic([
+                            value_low[i],
+                            value_high[i],
+                            slope_low[i] * y.cell,
+                            slope_high[i] * y.cell,
+                        ])
+                    });
+                    std::array::from_fn(|j| std::array::from_fn(|i| by_x[i][j]))
+                }));
             }
         }
-        Table { x, y, points }
+        Table { x, y, cells }
     }
 
     /// Whether (x, y) lies inside the rectangle.
@@ -128,55 +142,36 @@ impl<const N: usize> Table<N> {
         let (kx, tx, ox) = self.x.locate(x);
         let (ky, ty, oy) = self.y.locate(y);
         Spot {
-            corner: kx * (self.y.cells + 1) + ky,
-            bx: basis(tx),
-            by: basis(ty),
-            ox,
-            oy,
+            cell: kx * self.y.cells + ky,
             tx,
             ty,
+            ox,
+            oy,
         }
     }
 
     #[inline(always)]
-    fn corners(&self, s: &Spot, quantity: usize) -> [&[f64; 4]; 4] {
-        let stride = self.y.cells + 1;
-        debug_assert!(s.corner + stride + 1 < self.points.len());
-        // SAFETY: `spot` yields corners of existing cells only, and the table never changes size.
-        unsafe {
-            [
-                &self.points.get_unchecked(s.corner)[quantity],
-                &self.points.get_unchecked(s.corner + 1)[quantity],
-                &self.points.get_unchecked(s.corner + stride)[quantity],
-                &self.points.get_unchecked(s.corner + stride + 1)[quantity],
-            ]
-        }
+    fn coefficients(&self, s: &Spot, quantity: usize) -> &[[f64; 4]; 4] {
+        debug_assert!(s.cell < self.cells.len());
+        // SAFETY: `spot` yields existing cells only, and a table never changes size.
+        unsafe { &self.cells.get_unchecked(s.cell)[quantity] }
     }
 
     /// Value and both slopes of one quantity.
     #[inline(always)]
     pub fn sample(&self, s: &Spot, quantity: usize) -> Sample {
-        let [p00, p01, p10, p11] = self.corners(s, quantity);
-        let dy = basis_slope(s.ty);
-        let dx = basis_slope(s.tx);
-        // Along y first: value and x slope at either x end, then their y slopes.
-        let along = |a: &[f64; 4], b: &[f64; 4], w: &[f64; 4], k: usize| {
-            (w[0] * a[k] + w[1] * b[k]) + (w[2] * a[k + 2] + w[3] * b[k + 2])
-        };
-        let f0 = along(p00, p01, &s.by, 0);
-        let f1 = along(p10, p11, &s.by, 0);
-        let g0 = along(p00, p01, &s.by, 1);
-        let g1 = along(p10, p11, &s.by, 1);
-        let f0y = along(p00, p01, &dy, 0);
-        let f1y = along(p10, p11, &dy, 0);
-        let g0y = along(p00, p01, &dy, 1);
-        let g1y = along(p10, p11, &dy, 1);
-        let across = |w: &[f64; 4], a: f64, b: f64, c: f64, d: f64| {
-            (w[0] * a + w[1] * b) + (w[2] * c + w[3] * d)
-        };
-        let mut f = across(&s.bx, f0, f1, g0, g1);
-        let fx = across(&dx, f0, f1, g0, g1);
-        let fy = across(&s.bx, f0y, f1y, g0y, g1y);
+        let c = self.coefficients(s, quantity);
+        let (x, y) = (s.tx, s.ty);
+        let mut r = [0.0; 4];
+        let mut d = [0.0; 4];
+        for i in 0..4 {
+            r[i] = c[0][i] + y * (c[1][i] + y * (c[2][i] + y * c[3][i]));
+            d[i] = c[1][i] + y * (2.0 * c[2][i] + 3.0 * y * c[3][i]);
+        }
+        let x2 = x * x;
+        let mut f = (r[0] + x * r[1]) + x2 * (r[2] + x * r[3]);
+        let fx = r[1] + x * (2.0 * r[2] + 3.0 * x * r[3]);
+        let fy = (d[0] + x * d[1]) + x2 * (d[2] + x * d[3]);
         if s.ox != 0.0 || s.oy != 0.0 {
             f += s.ox * fx + s.oy * fy;
         }
@@ -193,12 +188,13 @@ impl<const N: usize> Table<N> {
         if s.ox != 0.0 || s.oy != 0.0 {
             return self.sample(s, quantity).f;
         }
-        let [p00, p01, p10, p11] = self.corners(s, quantity);
-        let along = |a: &[f64; 4], b: &[f64; 4], k: usize| {
-            (s.by[0] * a[k] + s.by[1] * b[k]) + (s.by[2] * a[k + 2] + s.by[3] * b[k + 2])
-        };
-        (s.bx[0] * along(p00, p01, 0) + s.bx[1] * along(p10, p11, 0))
-            + (s.bx[2] * along(p00, p01, 1) + s.bx[3] * along(p10, p11, 1))
+        let c = self.coefficients(s, quantity);
+        let (x, y) = (s.tx, s.ty);
+        let mut r = [0.0; 4];
+        for i in 0..4 {
+            r[i] = c[0][i] + y * (c[1][i] + y * (c[2][i] + y * c[3][i]));
+        }
+        (r[0] + x * r[1]) + x * x * (r[2] + x * r[3])
     }
 }
 
@@ -246,7 +242,7 @@ mod tests {
                 points.push([[f(x, y), fx(x, y), fy(x, y), fxy(x, y)]]);
             }
         }
-        let table = Table::new(ax, ay, points);
+        let table = Table::new(ax, ay, &points);
         for (x, y) in [(0.1, 0.2), (-1.0, 3.0), (2.0, 0.0), (1.37, 2.9)] {
             let spot = table.spot(x, y);
             let s = table.sample(&spot, 0);

@@ -2,10 +2,9 @@
 
 use std::sync::Arc;
 
-use super::layout::Layout;
 use super::model::{Model, instantaneous};
-use super::network::Rows;
-use crate::circuit::companion::Port;
+use super::network::Block;
+use crate::circuit::companion::{Input, Port};
 use crate::stage::surface::Surface;
 
 /// A grid voltage counts as found when Newton's last step was smaller than this, in volts.
@@ -72,54 +71,75 @@ struct Cell {
     next_estimate: f64,
 }
 
-/// Where a stage's ports stand among all ports.
+/// Where a stage's ports lie: block and port.
 #[derive(Clone, Copy)]
 struct Ports {
-    grid: usize,
-    plate: usize,
-    cathode: usize,
-    screen: Option<usize>,
+    grid: (usize, usize),
+    plate: (usize, usize),
+    cathode: (usize, usize),
+    screen: Option<(usize, usize)>,
 }
 
 /// The amplifiers of `L` lanes, stepped together. All lanes share one design; pots may differ.
 pub struct Kernel<const L: usize> {
-    /// All quantities of the linear networks: states, rails, the signal, one, port currents.
-    q: Vec<[f64; L]>,
-    states: usize,
-    supply_states: usize,
-    /// Open-circuit volts of every device port.
-    open_rows: Rows<L>,
-    open: Vec<[f64; L]>,
-    /// Open-circuit volts of every rail, from the supply's states.
-    rail_rows: Rows<L>,
+    blocks: Vec<Block<L>>,
+    supply: Block<L>,
     /// Between the rails, ohms.
     rail_impedance: Vec<[f64; L]>,
-    /// Next value of every state but the supply's, then the draw on every rail, then the watched node.
-    step_rows: Rows<L>,
-    stepped: Vec<[f64; L]>,
-    supply_rows: Rows<L>,
-    supply_stepped: Vec<[f64; L]>,
+    rail_volts: Vec<[f64; L]>,
+    /// The block in which the load lies.
+    output: usize,
     cells: Vec<[Cell; L]>,
     ports: Vec<Ports>,
-    signal: usize,
-    first_rail: usize,
-    first_current: usize,
     output_rail: usize,
     per_turns_ratio: [f64; L],
     draw_last: Vec<[f64; L]>,
     draw_before: Vec<[f64; L]>,
     /// Samples at which a stage left its surface or its grid did not settle.
     pub strayed: u64,
+    #[cfg(target_arch = "x86_64")]
+    wide: bool,
+    /// Looks at a surface so far: what a render costs beside its networks.
+    pub looks: u64,
+}
+
+/// Largest step of the grid's iteration, in volts: keeps the corner of conduction from throwing it.
+const STEP_LIMIT_V: f64 = 20.0;
+
+/// A step within [`STEP_LIMIT_V`]; not-a-number passes through.
+#[inline(always)]
+#[allow(clippy::manual_clamp)] // two compares are half of what `clamp` compiles to
+fn bounded(step: f64) -> f64 {
+    if step > STEP_LIMIT_V {
+        STEP_LIMIT_V
+    } else if step < -STEP_LIMIT_V {
+        -STEP_LIMIT_V
+    } else {
+        step
+    }
 }
 
 impl<const L: usize> Kernel<L> {
     /// Sets up at rest. All models must come from one design at one rate.
     pub fn new(models: [&Model; L]) -> Self {
         let first = models[0];
-        let layout = Layout::of(first);
-        let offset = layout.states;
+        let mut blocks = Vec::new();
+        let mut offset = 0;
+        for (n, network) in first.networks.iter().enumerate() {
+            blocks.push(Block::new(&models, n, offset));
+            offset += network.reactive.len();
+        }
+        let supply = blocks.pop().expect("the supply is always a network");
         let stages = first.surfaces.len();
-        let find = |port: Port| layout.ports.iter().position(|p| *p == port);
+        let find = |port: Port| {
+            first.networks.iter().enumerate().find_map(|(n, network)| {
+                network
+                    .ports
+                    .iter()
+                    .position(|p| *p == port)
+                    .map(|k| (n, k))
+            })
+        };
         let ports: Vec<Ports> = (0..stages)
             .map(|k| Ports {
                 grid: find(Port::Grid(k)).expect("every grid is a port"),
@@ -187,12 +207,6 @@ impl<const L: usize> Kernel<L> {
             })
             .collect();
         let rails = first.rails;
-        let rows = layout.rows(&models);
-        let mut q = vec![[0.0; L]; layout.width()];
-        q[layout.one()] = [1.0; L];
-        for (state, slot) in q.iter_mut().enumerate().take(layout.states) {
-            *slot = std::array::from_fn(|l| models[l].rest[state]);
-        }
         let rail_impedance = (0..rails * rails)
             .map(|k| {
                 let (a, b) = (Port::Rail(k / rails), Port::Rail(k % rails));
@@ -200,20 +214,14 @@ impl<const L: usize> Kernel<L> {
             })
             .collect();
         let mut kernel = Kernel {
-            q,
-            states: layout.states,
-            supply_states: layout.supply_states,
-            open: vec![[0.0; L]; rows.open.len()],
-            stepped: vec![[0.0; L]; rows.step.len()],
-            supply_stepped: vec![[0.0; L]; rows.supply.len()],
-            open_rows: rows.open,
-            rail_rows: rows.rails,
+            output: blocks
+                .iter()
+                .position(|b| b.watches)
+                .expect("the load lies in one network"),
+            blocks,
+            supply,
+            rail_volts: vec![[0.0; L]; rails],
             rail_impedance,
-            step_rows: rows.step,
-            supply_rows: rows.supply,
-            signal: layout.signal(),
-            first_rail: layout.first_rail(),
-            first_current: layout.first_current(),
             cells,
             ports,
             output_rail: first.output_rail,
@@ -221,6 +229,9 @@ impl<const L: usize> Kernel<L> {
             draw_last: vec![[0.0; L]; rails],
             draw_before: vec![[0.0; L]; rails],
             strayed: 0,
+            #[cfg(target_arch = "x86_64")]
+            wide: std::arch::is_x86_feature_detected!("avx"),
+            looks: 0,
         };
         for (l, model) in models.iter().enumerate() {
             kernel.remember_rest(l, model);
@@ -281,7 +292,9 @@ impl<const L: usize> Kernel<L> {
     /// Every state of one lane: networks, supply, then the tubes' capacitances.
     pub fn state(&self, l: usize) -> Vec<f64> {
         let mut all = Vec::new();
-        all.extend(self.q[..self.states].iter().map(|x| x[l]));
+        for b in self.blocks.iter().chain([&self.supply]) {
+            all.extend(b.x.iter().map(|x| x[l]));
+        }
         for c in &self.cells {
             all.extend([c[l].w_gp, c[l].w_gk, c[l].w_pk]);
         }
@@ -292,8 +305,10 @@ impl<const L: usize> Kernel<L> {
     pub fn set_state(&mut self, l: usize, state: &[f64]) {
         let mut values = state.iter().copied();
         let mut next = || values.next().expect("one value per state");
-        for x in &mut self.q[..self.states] {
-            x[l] = next();
+        for b in self.blocks.iter_mut().chain([&mut self.supply]) {
+            for x in &mut b.x {
+                x[l] = next();
+            }
         }
         for c in &mut self.cells {
             c[l].w_gp = next();
@@ -326,27 +341,51 @@ impl<const L: usize> Kernel<L> {
 
     /// Rail volts at the last step.
     pub fn rail(&self, r: usize, l: usize) -> f64 {
-        self.q[self.first_rail + r][l]
+        self.rail_volts[r][l]
     }
 
     /// One step: volts at the jack in, volts at the loudspeaker out.
     #[inline]
     pub fn step(&mut self, input: [f64; L]) -> [f64; L] {
+        #[cfg(target_arch = "x86_64")]
+        if self.wide {
+            // SAFETY: `wide` is set only where the processor has AVX.
+            return unsafe { self.step_wide(input) };
+        }
+        self.step_plain(input)
+    }
+
+    /// The same instructions in their three-operand, 256-bit form. No fused multiplication, so the same bits.
+    #[cfg(target_arch = "x86_64")]
+    #[target_feature(enable = "avx")]
+    fn step_wide(&mut self, input: [f64; L]) -> [f64; L] {
+        self.step_plain(input)
+    }
+
+    #[inline(always)]
+    fn step_plain(&mut self, input: [f64; L]) -> [f64; L] {
         // Rails, from what was drawn before: their capacitors make the guess as good as the answer.
+        self.supply.before();
         let rails = self.draw_last.len();
-        let (from, to) = self.q.split_at_mut(self.first_rail);
-        self.rail_rows.multiply(from, &mut to[..rails]);
-        for r in 0..rails {
-            for other in 0..rails {
-                let z = &self.rail_impedance[r * rails + other];
+        for (r, volts) in self.rail_volts.iter_mut().enumerate() {
+            *volts = *self.supply.open(r);
+            let row = &self.rail_impedance[r * rails..(r + 1) * rails];
+            for (z, (last, before)) in row.iter().zip(self.draw_last.iter().zip(&self.draw_before))
+            {
                 for l in 0..L {
-                    let drawn = 2.0 * self.draw_last[other][l] - self.draw_before[other][l];
-                    to[r][l] -= z[l] * drawn;
+                    volts[l] -= z[l] * (2.0 * last[l] - before[l]);
                 }
             }
         }
-        self.q[self.signal] = input;
-        self.open_rows.multiply(&self.q, &mut self.open);
+        for b in &mut self.blocks {
+            for (u, from) in b.u.iter_mut().zip(&b.inputs) {
+                *u = match from {
+                    Input::Signal => input,
+                    Input::Rail(r) => self.rail_volts[*r],
+                };
+            }
+            b.before();
+        }
         for k in 0..self.cells.len() {
             self.solve_stage(k);
         }
@@ -355,25 +394,25 @@ impl<const L: usize> Kernel<L> {
             self.finish_stage(k);
         }
 
-        self.step_rows.multiply(&self.q, &mut self.stepped);
-        let own = self.states - self.supply_states;
-        let top = self.stepped[own + rails];
-        let rail = self.q[self.first_rail + self.output_rail];
-        let output = std::array::from_fn(|l| (top[l] - rail[l]) * self.per_turns_ratio[l]);
-        self.q[..own].copy_from_slice(&self.stepped[..own]);
         std::mem::swap(&mut self.draw_before, &mut self.draw_last);
-        self.draw_last
-            .copy_from_slice(&self.stepped[own..own + rails]);
-        // The supply's rows read the draws where they read the signal path's: among the currents.
-        let currents = self.first_current + self.open.len();
-        self.q[currents..currents + rails].copy_from_slice(&self.draw_last);
-        self.supply_rows.multiply(&self.q, &mut self.supply_stepped);
-        self.q[own..self.states].copy_from_slice(&self.supply_stepped);
-        output
+        self.draw_last.fill([0.0; L]);
+        for b in &mut self.blocks {
+            b.after();
+            for (k, rail) in b.draws.iter().enumerate() {
+                for (sum, draw) in self.draw_last[*rail].iter_mut().zip(b.draw(k)) {
+                    *sum += draw;
+                }
+            }
+        }
+        self.supply.i.copy_from_slice(&self.draw_last);
+        self.supply.after();
+        let top = self.blocks[self.output].watched();
+        let rail = self.rail_volts[self.output_rail];
+        std::array::from_fn(|l| (top[l] - rail[l]) * self.per_turns_ratio[l])
     }
 
     /// Finds the grid of stage `k` and with it all its currents, the next grid's current being estimated.
-    #[inline]
+    #[inline(always)]
     fn solve_stage(&mut self, k: usize) {
         let ports = self.ports[k];
         let (before, from_k) = self.cells.split_at_mut(k);
@@ -386,7 +425,7 @@ impl<const L: usize> Kernel<L> {
                 (if conducted > 0.0 { conducted } else { 0.0 }) + 2.0 * n.cap_last - n.cap_before
             });
             c.next_estimate = estimate;
-            let mut p = self.open[ports.grid][l];
+            let mut p = self.blocks[ports.grid.0].open(ports.grid.1)[l];
             let mut r = c.z_gg_own;
             if let Some(previous) = before.last() {
                 let q = &previous[l];
@@ -394,8 +433,9 @@ impl<const L: usize> Kernel<L> {
                 p -= q.z_gp * (plate_current + q.slope * q.z_pg * q.next_estimate);
                 r -= q.z_gp * q.z_pg * q.slope;
             }
-            let ek = self.open[ports.cathode][l] - c.r_k * (c.g_gk * c.w_gk + c.g_pk * c.w_pk);
-            let e = self.open[ports.plate][l]
+            let ek = self.blocks[ports.cathode.0].open(ports.cathode.1)[l]
+                - c.r_k * (c.g_gk * c.w_gk + c.g_pk * c.w_pk);
+            let e = self.blocks[ports.plate.0].open(ports.plate.1)[l]
                 - c.z_pg * estimate
                 - c.z_pp * (c.g_gp * c.w_gp - c.g_pk * c.w_pk)
                 - ek;
@@ -405,7 +445,7 @@ impl<const L: usize> Kernel<L> {
             let surface = &*c.surface;
             let (mut shift, mut ds) = (0.0, 0.0);
             if let Some(screen) = ports.screen {
-                c.es = self.open[screen][l] - ek;
+                c.es = self.blocks[screen.0].open(screen.1)[l] - ek;
                 ds = c.es - surface.extent.s0;
                 shift = ds * surface.per_screen_volt;
             }
@@ -419,6 +459,7 @@ impl<const L: usize> Kernel<L> {
             let mut settled = false;
             let mut spot = None;
             for _ in 0..GRID_ITERATIONS {
+                self.looks += 1;
                 let (plate, found) = surface.plate(v + shift, e);
                 spot = Some(found);
                 let ip = plate.f + lift;
@@ -432,19 +473,14 @@ impl<const L: usize> Kernel<L> {
                 let f = v - p + r * (grid.f + c.g_gp * (v - vp) + c.g_gk * (v - vk));
                 let f_v = 1.0 + r * (grid.fx + c.g_gp * (1.0 - vp_v) + c.g_gk * (1.0 - vk_v));
                 let f_e = r * (grid.fy - c.g_gp * vp_e - c.g_gk * vk_e);
-                let mut step = -f / f_v;
-                // A grid swings by volts, not by hundreds: keeps the corner of conduction from throwing it.
-                if step > 20.0 {
-                    step = 20.0;
-                } else if step < -20.0 {
-                    step = -20.0;
-                }
+                let per_slope = 1.0 / f_v;
+                let step = bounded(-f * per_slope);
                 v += step;
                 if step < GRID_SETTLED_V && step > -GRID_SETTLED_V {
                     c.ip = ip + plate.fx * step;
                     let ig = grid.f + grid.fx * step;
                     c.ig = if ig > 0.0 { ig } else { 0.0 };
-                    c.v_over_e = -f_e / f_v;
+                    c.v_over_e = -f_e * per_slope;
                     c.slope = plate.fy + plate.fx * c.v_over_e;
                     c.ig_over_e = grid.fy + grid.fx * c.v_over_e;
                     settled = true;
@@ -468,7 +504,7 @@ impl<const L: usize> Kernel<L> {
     }
 
     /// Settles stage `k` with the next grid's true current, hands its currents to the networks, moves its states on.
-    #[inline]
+    #[inline(always)]
     fn finish_stage(&mut self, k: usize) {
         let ports = self.ports[k];
         let (upto, after) = self.cells.split_at_mut(k + 1);
@@ -490,13 +526,12 @@ impl<const L: usize> Kernel<L> {
             let capacitive = c.g_gp * (c.v - c.vp - c.w_gp) + c.g_gk * (c.v - c.vk - c.w_gk);
             let grid = c.ig + capacitive;
             let plate = c.ip + c.g_gp * c.w_gp - c.g_pk * c.w_pk;
-            let currents = &mut self.q[self.first_current..];
-            currents[ports.grid][l] = grid;
-            currents[ports.plate][l] = plate;
+            self.blocks[ports.grid.0].i[ports.grid.1][l] = grid;
+            self.blocks[ports.plate.0].i[ports.plate.1][l] = plate;
             if let Some(screen) = ports.screen {
-                currents[screen][l] = c.is;
+                self.blocks[screen.0].i[screen.1][l] = c.is;
             }
-            currents[ports.cathode][l] = -(grid + plate + c.is);
+            self.blocks[ports.cathode.0].i[ports.cathode.1][l] = -(grid + plate + c.is);
             c.w_gp = 2.0 * (c.v - c.vp) - c.w_gp;
             c.w_gk = 2.0 * (c.v - c.vk) - c.w_gk;
             c.w_pk = 2.0 * (c.vp - c.vk) - c.w_pk;

@@ -1,7 +1,6 @@
 //! The sample loop: a solved amplifier, one sample after the other.
 
 mod kernel;
-mod layout;
 pub mod listening;
 mod model;
 mod network;

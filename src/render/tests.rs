@@ -220,41 +220,48 @@ fn silence_stays_silent_and_small_signals_meet_the_ac_analysis() {
 }
 
 #[test]
-fn speed() {
-    let rate = 384e3;
-    let models: Vec<Model> = [2.0, 5.0, 10.0]
-        .iter()
-        .map(|g| Model::new(&amplifier(*g), rate, 1.0).unwrap())
-        .collect();
-    let n = 384_000;
-    let input: Vec<f64> = (0..n)
-        .map(|k| 0.2 * (k as f64 * std::f64::consts::TAU * 1e3 / rate).sin())
-        .collect();
-    let mut one = Kernel::<1>::new([&models[1]]);
-    let t = std::time::Instant::now();
-    let mut peak = 0.0f64;
-    for x in &input {
-        peak = peak.max(one.step([*x])[0].abs());
-    }
-    let dt = t.elapsed().as_secs_f64();
+fn looks() {
+    let text = crate::design::shipped()[0].1;
+    let reading = crate::design::read(text, &[]).unwrap();
+    let catalog = Catalog::shipped();
+    let prepared =
+        crate::stage::resolve::prepare(&reading.design, &reading.places, &catalog, &|_| None)
+            .unwrap();
+    let amp = Amplifier::solve(
+        &prepared.design,
+        &prepared.devices,
+        &prepared.iron,
+        Some(5.0),
+        LoadKind::Rated,
+    )
+    .unwrap();
+    let di = crate::wav::read(crate::signal::DEFAULT_DI).unwrap();
+    let model = Model::new(&amp, 384e3, 1.0).unwrap();
+    let mut kernel = Kernel::<1>::new([&model]);
+    let over = crate::resample::Oversampler::new(8).unwrap();
+    let mut n = 0u64;
+    over.process(&di.channels[0][..96000], |b| {
+        for x in b {
+            n += 1;
+            *x = kernel.step([*x])[0];
+        }
+    })
+    .unwrap();
     println!(
-        "one: {:.1} ns/sample, {:.1}x real time, peak {peak} strayed {}",
-        dt / n as f64 * 1e9,
-        1.0 / dt,
-        one.strayed
+        "looks per stage and sample {} strayed {}",
+        kernel.looks as f64 / n as f64 / 3.0,
+        kernel.strayed
     );
-    let mut three = Kernel::<3>::new([&models[0], &models[1], &models[2]]);
-    let t = std::time::Instant::now();
-    for x in &input {
-        three.step([*x; 3]);
+    for b in &model.networks {
+        println!(
+            "states {} inputs {} ports {} draws {} watched {}",
+            b.reactive.len(),
+            b.inputs.len(),
+            b.ports.len(),
+            b.draws.len(),
+            b.watched.len()
+        );
     }
-    let dt = t.elapsed().as_secs_f64();
-    println!(
-        "three: {:.1} ns/sample/lane strayed {}",
-        dt / n as f64 * 1e9 / 3.0,
-        three.strayed
-    );
-    let _ = Arc::new(());
 }
 
 #[test]

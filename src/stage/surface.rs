@@ -221,7 +221,7 @@ impl Surface {
                 ]]);
             }
         }
-        let plate = Table::new(x, y, plate);
+        let plate = Table::new(x, y, &plate);
 
         let has_screen = device.has_screen_port();
         let mut per_screen_volt = 0.0;
@@ -271,7 +271,7 @@ impl Surface {
                     ]);
                 }
             }
-            Table::new(x, y, out)
+            Table::new(x, y, &out)
         });
 
         // The cathode's own rise keeps the grid from conducting below this.
@@ -324,7 +324,7 @@ impl Surface {
             extent,
             plate,
             screen,
-            grid: Table::new(gx, gy, grid),
+            grid: Table::new(gx, gy, &grid),
             per_screen_volt,
             conduction_start,
         }

@@ -72,10 +72,10 @@ pub fn of_design(prepared: &Prepared, point: &OperatingPoint) -> Vec<Warning> {
         if !range.plate_volts.contains(Volts(stage.v_pk)) {
             outside.push(format!("plate at {:.0} V", stage.v_pk));
         }
-        if let (Some(v), Some(span)) = (stage.v_sk, &range.screen_volts) {
-            if !span.contains(Volts(v)) {
-                outside.push(format!("screen at {v:.0} V"));
-            }
+        if let (Some(v), Some(span)) = (stage.v_sk, &range.screen_volts)
+            && !span.contains(Volts(v))
+        {
+            outside.push(format!("screen at {v:.0} V"));
         }
         if stage.plate_amperes / sections > range.plate_current.high.0
             || !range
@@ -130,14 +130,14 @@ pub fn of_figures(prepared: &Prepared, gains: &[GainFigures]) -> Vec<Warning> {
         let setting = gain
             .setting
             .map_or("as designed".to_string(), |s| format!("at gain {s}"));
-        if let Ok(dbc) = gain.alias.worst_dbc {
-            if dbc > ALIAS_LIMIT_DBC {
-                found.push(warning(
-                    Code::AliasHigh,
-                    "render",
-                    format!("{setting} aliases reach {dbc:.0} dBc; use a higher --oversample"),
-                ));
-            }
+        if let Ok(dbc) = gain.alias.worst_dbc
+            && dbc > ALIAS_LIMIT_DBC
+        {
+            found.push(warning(
+                Code::AliasHigh,
+                "render",
+                format!("{setting} aliases reach {dbc:.0} dBc; use a higher --oversample"),
+            ));
         }
         for tone in &gain.tones {
             let unsettled = tone.levels.iter().filter(|l| !l.settled).count();

@@ -26,22 +26,35 @@ fn timed(least: &mut Duration, work: impl FnOnce()) {
 }
 
 fn main() {
-    let text = design::shipped().iter().find(|(name, _)| *name == "corner-room").expect("shipped").1;
+    let text = design::shipped()
+        .iter()
+        .find(|(name, _)| *name == "corner-room")
+        .expect("shipped")
+        .1;
     let reading = design::read(text, &[]).expect("shipped designs are valid");
     let catalog = Catalog::shipped();
-    let prepared =
-        resolve::prepare(&reading.design, &reading.places, &catalog, &|_| None).expect("shipped designs resolve");
+    let prepared = resolve::prepare(&reading.design, &reading.places, &catalog, &|_| None)
+        .expect("shipped designs resolve");
     let di = wav::read(signal::DEFAULT_DI).expect("the embedded recording is valid");
     let input = &di.channels[0];
     let rate = 48e3 * OVERSAMPLE as f64;
     let amps: Vec<Amplifier> = [2.0, 5.0, 10.0]
         .iter()
         .map(|g| {
-            Amplifier::solve(&prepared.design, &prepared.devices, &prepared.iron, Some(*g), LoadKind::Rated)
-                .expect("shipped designs settle")
+            Amplifier::solve(
+                &prepared.design,
+                &prepared.devices,
+                &prepared.iron,
+                Some(*g),
+                LoadKind::Rated,
+            )
+            .expect("shipped designs settle")
         })
         .collect();
-    let models: Vec<Model> = amps.iter().map(|a| Model::new(a, rate, 1.0).expect("shipped designs rest")).collect();
+    let models: Vec<Model> = amps
+        .iter()
+        .map(|a| Model::new(a, rate, 1.0).expect("shipped designs rest"))
+        .collect();
     let oversampler = Oversampler::new(OVERSAMPLE).expect("8 is a factor");
 
     let mut bare = Duration::MAX;
@@ -84,7 +97,10 @@ fn main() {
     let seconds = input.len() as f64 / 48e3;
     let bare_s = bare.as_secs_f64();
     println!("take                          {seconds:.2} s");
-    println!("bare up and down              {:.1} times real time", seconds / bare_s);
+    println!(
+        "bare up and down              {:.1} times real time",
+        seconds / bare_s
+    );
     println!(
         "one render                    {:.1} times real time, {:.1} times bare",
         seconds / one.as_secs_f64(),
@@ -95,8 +111,14 @@ fn main() {
         seconds / three.as_secs_f64(),
         three.as_secs_f64() / bare_s / 3.0
     );
-    println!("surfaces of three stages      {:.2} ms", 1e3 * surfaces.as_secs_f64());
-    println!("whole model with its rest     {:.2} ms", 1e3 * building.as_secs_f64());
+    println!(
+        "surfaces of three stages      {:.2} ms",
+        1e3 * surfaces.as_secs_f64()
+    );
+    println!(
+        "whole model with its rest     {:.2} ms",
+        1e3 * building.as_secs_f64()
+    );
 
     let model = Model::new(&amps[1], rate, tone::HIGHEST_LEVEL_V).expect("rests");
     let mut least = Duration::MAX;

@@ -1,8 +1,8 @@
 //! One file for each kind of evidence.
 
+mod broken_designs;
 mod broken_wavs;
 mod demo_audio;
 mod measure_oracle;
 mod published_measures;
 mod published_tubes;
-mod broken_designs;
