@@ -26,6 +26,7 @@ pub mod diagnostic;
 pub mod measure;
 pub mod numeric;
 pub mod render;
+pub mod report;
 pub mod resample;
 pub mod signal;
 pub mod stage;
