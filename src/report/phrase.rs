@@ -18,6 +18,9 @@ pub fn dbfs(v_peak: f64, full_scale_v_peak: f64) -> f64 {
 
 /// Three significant digits with SI prefix and unit.
 pub fn short(value: f64, symbol: &str) -> String {
+    if !value.is_finite() {
+        return "not finite".to_owned();
+    }
     let rounded = format!("{value:.2e}").parse().unwrap_or(value);
     engineering(rounded, symbol)
 }
@@ -25,7 +28,9 @@ pub fn short(value: f64, symbol: &str) -> String {
 /// Percent with two significant digits below 10 and none after the point above.
 pub fn percent(value: f64) -> String {
     let size = value.abs();
-    if size >= 9.95 {
+    if !size.is_finite() {
+        "not finite".to_owned()
+    } else if size >= 9.95 {
         format!("{value:.0} %")
     } else if size >= 0.995 {
         format!("{value:.1} %")
@@ -33,6 +38,15 @@ pub fn percent(value: f64) -> String {
         format!("{value:.2} %")
     } else {
         format!("{value:.3} %")
+    }
+}
+
+/// Decibels with one digit after the point.
+pub fn decibels(value: f64) -> String {
+    if value.is_finite() {
+        format!("{value:.1} dB")
+    } else {
+        "not finite".to_owned()
     }
 }
 
@@ -118,6 +132,10 @@ mod tests {
     fn three_digits_are_enough_to_read() {
         assert_eq!(short(0.51234, "V"), "512 mV");
         assert_eq!(short(0.99996, "V"), "1 V");
+        assert_eq!(short(f64::NAN, "V"), "not finite");
+        assert_eq!(percent(f64::INFINITY), "not finite");
+        assert_eq!(decibels(f64::NEG_INFINITY), "not finite");
+        assert_eq!(decibels(-3.04), "-3.0 dB");
         assert_eq!(percent(12.34), "12 %");
         assert_eq!(percent(1.234), "1.2 %");
         assert_eq!(percent(0.1234), "0.12 %");

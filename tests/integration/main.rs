@@ -6,3 +6,5 @@ mod demo_audio;
 mod measure_oracle;
 mod published_measures;
 mod published_tubes;
+mod report_bias;
+mod broken_designs;

@@ -1,7 +1,7 @@
 //! The operating point as a builder checks it.
 
 use super::page::{EXCEEDED, Page};
-use crate::report::phrase::{self, percent, short};
+use crate::report::phrase::{self, decibels, percent, short};
 use crate::report::safety;
 use crate::stage::operating_point::{OperatingPoint, StagePoint};
 use crate::stage::ratings::{Condition, RatingCheck};
@@ -87,9 +87,9 @@ fn stages(p: &OperatingPoint, page: &Page) -> String {
             s.mu.map_or("infinite".into(), |m| short(m, "")),
             short(s.ac_load, "Ω"),
             format!(
-                "{} ({:+.1} dB)",
+                "{} ({})",
                 short(s.gain, ""),
-                20.0 * s.gain.abs().log10()
+                decibels(20.0 * s.gain.abs().log10())
             ),
             if s.fixed_bias { "fixed" } else { "cathode" }.into(),
             short(s.grid_circuit_ohms, "Ω"),

@@ -63,7 +63,7 @@ fn rows(curve: &TransferCurve) -> Vec<Vec<String>> {
                 signed(p.v_gk),
                 signed(p.plate_v),
                 short(p.plate_a, "A"),
-                format!("{:.2}", p.relative_gain),
+                short(p.relative_gain, ""),
             ]),
             None => row.extend([
                 "outside the curve".into(),

@@ -60,9 +60,9 @@ pub fn render_text(study: &RenderStudy, set: Option<&WrittenSet>, page: &Page) -
     out.push('\n');
     out += &page.paragraph(
         &format!(
-            "Sound: into the {}, all files scaled by {:+.1} dB (their full scale is {}); listening copies through {}.",
+            "Sound: into the {}, all files scaled by {} (their full scale is {}); listening copies through {}.",
             study.render_load,
-            study.scale_db,
+            phrase::decibels(study.scale_db),
             short(study.wav_full_scale_v_peak, "V"),
             study.listening,
         ),
@@ -91,7 +91,7 @@ fn row(study: &RenderStudy, g: &GainFigures) -> Vec<String> {
         cell(&onset, |o| cause(study, o)),
         cell(&harmonics, |h| percent(h.thd_percent)),
         cell(&harmonics, |h| strongest(h)),
-        cell(&g.alias.worst_dbc, |db| format!("{db:.0} dB")),
+        cell(&g.alias.worst_dbc, |db| phrase::decibels(*db)),
     ]
 }
 
