@@ -8,6 +8,11 @@ use crate::stage::ratings::{Condition, RatingCheck};
 use crate::study::result::BiasStudy;
 use crate::units::notation::engineering;
 
+/// Resistors below have no line of their own: nothing there can burn.
+const LEAST_WATTS: f64 = 1e-6;
+/// Direct volts below are written as none: far under what a meter shows, and where a solution's rounding begins.
+const LEAST_VOLTS: f64 = 1e-6;
+
 /// Exceeded ratings, supply, stages, parts, ratings, transformer, cautions.
 pub fn bias_text(study: &BiasStudy, page: &Page) -> String {
     let p = &study.point;
@@ -34,16 +39,16 @@ fn supply(p: &OperatingPoint, page: &Page) -> String {
     let s = &p.supply;
     let mut rows = vec![vec![
         "source".to_owned(),
-        engineering(s.volts, "V"),
-        engineering(s.cold_volts, "V"),
+        volts(s.volts),
+        volts(s.cold_volts),
         engineering(s.amperes, "A"),
         engineering(s.resistance, "Ω"),
     ]];
     for r in &p.rails {
         rows.push(vec![
             r.name.clone(),
-            engineering(r.volts, "V"),
-            engineering(r.cold_volts, "V"),
+            volts(r.volts),
+            volts(r.cold_volts),
             engineering(r.amperes, "A"),
             String::new(),
         ]);
@@ -62,16 +67,15 @@ fn supply(p: &OperatingPoint, page: &Page) -> String {
 }
 
 fn stages(p: &OperatingPoint, page: &Page) -> String {
-    let volts = |s: &StagePoint| {
+    let electrodes = |s: &StagePoint| {
         vec![
             s.name.clone(),
             tube(s),
-            engineering(s.plate_volts, "V"),
-            s.screen_volts
-                .map_or(String::new(), |v| engineering(v, "V")),
-            engineering(s.grid_volts, "V"),
-            engineering(s.cathode_volts, "V"),
-            engineering(s.v_gk, "V"),
+            volts(s.plate_volts),
+            s.screen_volts.map_or(String::new(), volts),
+            volts(s.grid_volts),
+            volts(s.cathode_volts),
+            volts(s.v_gk),
             engineering(s.plate_amperes, "A"),
             s.screen_amperes
                 .map_or(String::new(), |a| engineering(a, "A")),
@@ -110,7 +114,7 @@ fn stages(p: &OperatingPoint, page: &Page) -> String {
             "plate\nwatts",
             "screen\nwatts",
         ],
-        p.stages.iter().map(volts).collect(),
+        p.stages.iter().map(electrodes).collect(),
     );
     out.push('\n');
     out += &page.table(
@@ -130,6 +134,17 @@ fn stages(p: &OperatingPoint, page: &Page) -> String {
     out
 }
 
+fn volts(value: f64) -> String {
+    engineering(
+        if value.abs() < LEAST_VOLTS {
+            0.0
+        } else {
+            value
+        },
+        "V",
+    )
+}
+
 fn tube(s: &StagePoint) -> String {
     let mut name = s.tube.clone();
     if s.parallel > 1 {
@@ -142,21 +157,30 @@ fn tube(s: &StagePoint) -> String {
 }
 
 fn resistors(p: &OperatingPoint, page: &Page) -> String {
-    let mut by_watts: Vec<_> = p.resistors.iter().collect();
-    by_watts.sort_by(|a, b| b.watts.total_cmp(&a.watts));
-    let rows = by_watts.into_iter().map(|r| {
+    let (mut warm, idle): (Vec<_>, Vec<_>) = p
+        .resistors
+        .iter()
+        .partition(|r| !(r.watts.abs() < LEAST_WATTS));
+    warm.sort_by(|a, b| b.watts.total_cmp(&a.watts));
+    let rows = warm.into_iter().map(|r| {
         vec![
             r.name.clone(),
             engineering(r.ohms, "Ω"),
-            engineering(r.volts, "V"),
+            volts(r.volts.abs()),
             short(r.watts, "W"),
         ]
     });
-    page.table(
+    let mut out = page.table(
         "<>>>",
         &["resistor", "value", "across it", "dissipation"],
         rows.collect(),
-    )
+    );
+    if !idle.is_empty() {
+        let names: Vec<_> = idle.iter().map(|r| r.name.as_str()).collect();
+        let least = short(LEAST_WATTS, "W");
+        out += &page.paragraph(&format!("Under {least}: {}", names.join(", ")), 2);
+    }
+    out
 }
 
 fn capacitors(p: &OperatingPoint, page: &Page) -> String {
@@ -164,8 +188,8 @@ fn capacitors(p: &OperatingPoint, page: &Page) -> String {
         vec![
             c.name.clone(),
             engineering(c.farads, "F"),
-            engineering(c.volts, "V"),
-            engineering(c.cold_volts, "V"),
+            volts(c.volts),
+            volts(c.cold_volts),
         ]
     });
     page.table(
@@ -291,6 +315,20 @@ mod tests {
         let place = |name: &str| out.find(name).expect(name);
         assert!(place("stage.power.cathode.resistor") < place("stage.first.plate.resistor"));
         assert!(place("stage.first.plate.resistor") < place("stage.first.cathode.resistor"));
+    }
+
+    #[test]
+    fn rounding_is_not_shown_as_volts_or_watts() {
+        let mut study = sample::bias();
+        study.point.stages[0].grid_volts = -1.5e-30;
+        study.point.resistors[0].volts = 1e-12;
+        study.point.resistors[0].watts = 1e-29;
+        let out = bias_text(&study, &Page::default());
+        assert!(!out.contains("e-"), "{out}");
+        assert!(
+            out.contains("Under 1 µW: stage.first.plate.resistor"),
+            "{out}"
+        );
     }
 
     #[test]

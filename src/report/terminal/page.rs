@@ -141,11 +141,21 @@ impl Page {
             .collect()
     }
 
-    /// A paragraph, its lines after the first set in by `indent`.
+    /// A paragraph, its lines after the first set in by `indent`; a number and its unit stay together.
     pub(super) fn paragraph(&self, text: &str, indent: usize) -> String {
+        let mut words: Vec<String> = Vec::new();
+        for word in text.split_whitespace() {
+            match words.last_mut() {
+                Some(last) if last.ends_with(|c: char| c.is_ascii_digit()) && is_unit(word) => {
+                    last.push(' ');
+                    last.push_str(word);
+                }
+                _ => words.push(word.to_owned()),
+            }
+        }
         let mut out = String::new();
         let mut length = 0;
-        for word in text.split_whitespace() {
+        for word in words {
             let size = word.chars().count();
             if length > indent && length + 1 + size > self.width.max(20) {
                 out.push('\n');
@@ -155,7 +165,7 @@ impl Page {
                 out.push(' ');
                 length += 1;
             }
-            out += word;
+            out += &word;
             length += size;
         }
         out.push('\n');
@@ -202,6 +212,13 @@ impl Page {
     }
 }
 
+/// A unit symbol, with prefix and punctuation or without.
+fn is_unit(word: &str) -> bool {
+    let symbol = word.trim_end_matches(|c: char| c.is_ascii_punctuation() && c != '%');
+    let base = ["V", "A", "W", "Ω", "H", "F", "Hz", "dB", "%"];
+    symbol.chars().count() <= 3 && base.iter().any(|unit| symbol.ends_with(unit))
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
@@ -233,6 +250,16 @@ mod tests {
             out,
             "one two three four five six\n    seven eight nine ten\n"
         );
+    }
+
+    #[test]
+    fn numbers_keep_their_units() {
+        let page = Page {
+            width: 24,
+            paint: Paint::off(),
+        };
+        let out = page.paragraph("the rail that stands at 250 V, and more", 0);
+        assert_eq!(out, "the rail that stands at\n250 V, and more\n");
     }
 
     #[test]
