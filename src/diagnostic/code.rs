@@ -177,4 +177,32 @@ codes! {
     SurfaceLeft = "surface-left",
     /// A recording whose level deserves a second look.
     DiLevel = "di-level",
+    /// Something odd about a sound file, and how it was taken.
+    OddSoundFile = "odd-sound-file",
+
+    // -- the program
+    /// A command line that says nothing this program does.
+    Usage = "usage",
+    /// A file that cannot be read.
+    UnreadableFile = "unreadable-file",
+    /// A file or folder that cannot be written.
+    UnwritableOutput = "unwritable-output",
+    /// A file stands where one would be written.
+    FileExists = "file-exists",
+    /// A finished set stands where one would be written.
+    SetExists = "set-exists",
+    /// A name that is neither a shipped design nor a file.
+    UnknownDesign = "unknown-design",
+    /// Gain settings for a design without a gain control.
+    NoGainControl = "no-gain-control",
+    /// A channel that the recording does not have.
+    NoSuchChannel = "no-such-channel",
+    /// A level given for the peak of a recording that is silent.
+    SilentRecording = "silent-recording",
+    /// Sound files longer than their format can say.
+    TooLong = "too-long",
+    /// A circuit or a sound that could not be computed.
+    NotComputed = "not-computed",
+    /// Stopped before it was done.
+    Interrupted = "interrupted",
 }
