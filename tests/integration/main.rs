@@ -2,6 +2,7 @@
 
 mod broken_designs;
 mod broken_wavs;
+mod cli;
 mod demo_audio;
 mod measure_oracle;
 mod published_measures;
