@@ -250,7 +250,7 @@ pub struct Curve {
     #[arg(long, value_name = "NAME", help_heading = "Design")]
     pub stage: Option<String>,
 
-    /// Write the curves into this folder too, as CSV files
+    /// Write the curves into this folder too, as CSV and SVG files
     #[arg(long, value_name = "DIR", help_heading = "Files")]
     pub out: Option<PathBuf>,
 }

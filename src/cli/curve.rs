@@ -10,6 +10,7 @@ use super::source::{self, Loaded};
 use forehear::diagnostic::{Code, nearest};
 use forehear::report::csv::{plate_csv, transfer_csv};
 use forehear::report::json::curve_document;
+use forehear::report::svg::{plate_svg, transfer_svg};
 use forehear::report::terminal::curve_text;
 use forehear::study::curve;
 use forehear::study::result::CurveStudy;
@@ -68,10 +69,17 @@ fn stages(design: &Loaded, wanted: Option<&str>) -> Result<Vec<usize>, Failure> 
     }
 }
 
-/// Names and contents of the files: the sheets hold all stages.
+/// Names and contents of the files: the sheets hold all stages, each stage has two pictures.
 fn files(stem: &str, studies: &[CurveStudy]) -> Vec<(String, String)> {
-    vec![
+    let mut files = vec![
         (format!("{stem}-transfer.csv"), transfer_csv(studies)),
         (format!("{stem}-plate-curves.csv"), plate_csv(studies)),
-    ]
+    ];
+    for study in studies {
+        let stage = &study.stage;
+        let transfer = transfer_svg(&study.design, std::slice::from_ref(&study.transfer));
+        files.push((format!("{stem}-{stage}-transfer.svg"), transfer));
+        files.push((format!("{stem}-{stage}-plate-curves.svg"), plate_svg(study)));
+    }
+    files
 }

@@ -12,11 +12,25 @@ use super::plan::{LEVELS_FILE, REPORT_FILE, RenderPlan, encoding};
 use forehear::diagnostic::Code;
 use forehear::report::csv::levels_csv;
 use forehear::report::json::render_document;
+use forehear::report::svg::{distortion_svg, harmonics_svg, response_svg, transfer_svg};
 use forehear::report::terminal::{WrittenSet, render_text};
 use forehear::study::render::{Sound, study};
 use forehear::study::result::RenderStudy;
 use forehear::study::{StudyFault, Watch};
 use forehear::wav::{self, WriteFault};
+
+/// Draws what a render found.
+type Draw = fn(&RenderStudy) -> String;
+
+/// Pictures of a set.
+const PICTURES: [(&str, Draw); 4] = [
+    ("transfer.svg", |study| {
+        transfer_svg(&study.design, &study.transfer)
+    }),
+    ("thd.svg", distortion_svg),
+    ("harmonics.svg", harmonics_svg),
+    ("response.svg", response_svg),
+];
 
 pub fn run(args: &Render, console: Console) -> Result<(), Stop> {
     let plan = RenderPlan::new(args)?;
@@ -34,6 +48,9 @@ pub fn run(args: &Render, console: Console) -> Result<(), Stop> {
     progress.show(1.0, "writing");
     write_sounds(&mut output, &plan, &sounds)?;
     output.add_text(LEVELS_FILE, &levels_csv(&result))?;
+    for (name, draw) in PICTURES {
+        output.add_text(name, &draw(&result))?;
+    }
     let report = render_document(&result, &files);
     output.add_text(REPORT_FILE, &report)?;
     let folder = output.folder().display().to_string();
@@ -59,6 +76,7 @@ fn file_names(plan: &RenderPlan) -> Vec<String> {
         .flat_map(|(terminals, listening)| [terminals.clone(), listening.clone()])
         .collect();
     names.push(LEVELS_FILE.to_owned());
+    names.extend(PICTURES.iter().map(|(name, _)| (*name).to_owned()));
     names.push(REPORT_FILE.to_owned());
     names
 }

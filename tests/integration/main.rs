@@ -8,4 +8,3 @@ mod measure_oracle;
 mod published_measures;
 mod published_tubes;
 mod report_bias;
-mod broken_designs;

@@ -77,7 +77,7 @@ fn curve_shows_all_stages_or_one_and_writes_its_files_once() {
     let document = run.document("curve");
     assert_eq!(document["stages"].as_array().unwrap().len(), 1);
     let files = document["files"].as_array().unwrap();
-    assert!(files.len() >= 2);
+    assert_eq!(files.len(), 4);
     for file in files {
         let content = place.read(file.as_str().unwrap());
         assert!(content.len() > 500, "{file}");

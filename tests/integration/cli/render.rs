@@ -51,6 +51,11 @@ fn a_render_writes_its_set_and_says_so() {
     }
     let levels = String::from_utf8(place.read("forehear-out/window-room/levels.csv")).unwrap();
     assert!(levels.lines().count() > 2 * 3 * 30);
+    for picture in ["transfer", "thd", "harmonics", "response"] {
+        let name = format!("forehear-out/window-room/{picture}.svg");
+        let text = String::from_utf8(place.read(&name)).unwrap();
+        assert!(text.contains("<svg") && text.trim_end().ends_with("</svg>"));
+    }
 }
 
 #[test]
