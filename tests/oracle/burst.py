@@ -61,13 +61,6 @@ class Burst:
         carrier = sin(w * t)
         return envelope * carrier, slope * carrier + envelope * w * cos(w * t)
 
-    def kinks(self):
-        """Times at which the second derivative jumps: the solver starts anew there."""
-        times = {self.burst_start, self.burst_start + self.edge, self.burst_end - self.edge, self.burst_end}
-        if self.probe:
-            times |= {self.probe_start, self.probe_start + self.edge}
-        return sorted(t for t in times if 0.0 < t < self.duration)
-
 
 def fir_taps(spec=FIR):
     m = (spec["taps"] - 1) // 2

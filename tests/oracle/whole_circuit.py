@@ -2,6 +2,7 @@
 """Whole-circuit oracle: a design's complete network integrated to tight tolerances, to hold the renderer against.
 
     python3 whole_circuit.py --cases cases.toml --out results [--only NAME]
+    python3 whole_circuit.py --trapezoidal [--only NAME]
     python3 whole_circuit.py --self-test
     python3 whole_circuit.py --inspect designs/rehearsal_nook.toml [--gain 6]
 
@@ -24,6 +25,7 @@ import netlist
 from burst import FIR, Burst, to_48k
 from solve import integrate
 from state_space import StateSpace
+from trapezoid import trapezoidal
 
 FREQUENCY_HZ = 997.0  # chosen: near 1 kHz and not dividing the rate, which would hide aliases of what is compared
 EDGE_S = 0.005
@@ -130,6 +132,25 @@ def run_case(case, folder, out, only_level=None, log=print):
             f"{tally['evaluations']} evaluations")
 
 
+def trapezoidal_floor(case, folder, out):
+    """Error of a plain trapezoidal solution at 384 kHz against the recorded result: what that rule can reach at best."""
+    tube_for = tube_source(folder / case["catalog"] if "catalog" in case else None, case.get("sets", {}))
+    for level in LEVELS:
+        recorded = out / f"{case['name']}-{level}.json"
+        if not recorded.exists():
+            continue
+        header = json.loads(recorded.read_text())
+        _, net, system, rest = load(folder / case["design"], tube_for, case.get("gain_setting"))
+        i = header["input"]
+        burst = Burst(i["frequency_hz"], i["level_v"], i["probe_v"], i["burst_start_s"], i["burst_end_s"],
+                      i["probe_start_s"], i["edge_s"], i["duration_s"])
+        kind, number, _, ohms, _, _, scale = net.output
+        frames = to_48k(scale * ohms * trapezoidal(net, system, rest, burst, FIR["rate_hz"])[number])
+        reference = np.frombuffer((out / header["data"]).read_bytes(), "<f4").astype(float)
+        error = np.sqrt(np.sum((frames - reference) ** 2) / np.sum(reference**2))
+        print(f"{case['name']}-{level}: trapezoidal rule at 384 kHz {20 * np.log10(error):.1f} dB", flush=True)
+
+
 def inspect(path, tube_for, gain):
     _, net, system, rest = load(path, tube_for, gain)
     print(f"{system.nx} capacitor states, {system.size - system.nx} inductor states; "
@@ -150,6 +171,7 @@ def main():
     parser.add_argument("--cases", type=Path, default=here / "cases.toml")
     parser.add_argument("--out", type=Path, default=here / "results")
     parser.add_argument("--only", help="one case by name, or case-level")
+    parser.add_argument("--trapezoidal", action="store_true", help="hold a plain trapezoidal solution against the recorded results")
     parser.add_argument("--self-test", action="store_true", help="prove the oracle against known answers")
     parser.add_argument("--inspect", type=Path, metavar="DESIGN", help="print a design's rest state")
     parser.add_argument("--gain", type=float, help="gain setting for --inspect")
@@ -170,6 +192,9 @@ def main():
             if level not in LEVELS:
                 continue
         found = True
+        if args.trapezoidal:
+            trapezoidal_floor(case, args.cases.resolve().parent, args.out)
+            continue
         run_case(case, args.cases.resolve().parent, args.out, level, lambda line: print(line, flush=True))
     if not found:
         print(f"no case {args.only!r}; there are: {', '.join(c['name'] for c in cases)}", file=sys.stderr)
