@@ -160,7 +160,7 @@ fn resistors(p: &OperatingPoint, page: &Page) -> String {
     let (mut warm, idle): (Vec<_>, Vec<_>) = p
         .resistors
         .iter()
-        .partition(|r| !(r.watts.abs() < LEAST_WATTS));
+        .partition(|r| r.watts.is_nan() || r.watts.abs() >= LEAST_WATTS);
     warm.sort_by(|a, b| b.watts.total_cmp(&a.watts));
     let rows = warm.into_iter().map(|r| {
         vec![
