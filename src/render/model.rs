@@ -249,9 +249,9 @@ fn build_surface(
         .map_or(0.0, |n| volts[n] + s.r_s * currents[1] - cathode);
     let supply = amp.supply_volts();
     let e = if amp.drives_transformer(k) {
-        (-0.4 * supply, 3.2 * supply)
+        (-0.6 * supply, 3.6 * supply)
     } else {
-        (0.15 * e_rest, (1.15 * supply).max(e_rest + 20.0))
+        (0.05 * e_rest, (1.25 * supply).max(e_rest + 20.0))
     };
     let device_volts_at = |v: f64| device.currents(v, s_rest, e.1);
     let mut cutoff = -1.0;
@@ -270,18 +270,34 @@ fn build_surface(
     } else {
         0.0
     };
-    let top = (2.0 + own_rise).max(direct);
+    // Elsewhere the source's resistance holds the grid: no higher than where the current it would have to
+    // give drops the whole supply.
+    let mut top = (2.0 + own_rise).max(direct);
+    while k > 0
+        && top < 40.0
+        && source * device.currents(top - own_rise, s_rest, 0.3 * supply).ig < supply
+    {
+        top *= 1.25;
+    }
+    let bottom = cutoff.min(v_rest - 1.0);
     let (v_cells, e_cells) = if device.has_screen_port() || amp.drives_transformer(k) {
         fineness.pentode
     } else {
         fineness.triode
     };
+    // As fine as if the top were at conduction's corner; conduction itself keeps its own spacing.
+    let widened = |cells: usize, from: f64, usual: f64| -> usize {
+        let share = (top - from) / (usual - from);
+        (cells as f64 * share.clamp(1.0, 4.0)).ceil() as usize
+    };
+    let v_cells = widened(v_cells, bottom, 2.0 + own_rise);
+    let grid_cells = widened(fineness.grid.0, -1.0, 2.0 + own_rise);
     let extent = Extent {
-        v: (cutoff.min(v_rest - 1.0), top),
+        v: (bottom, top),
         e,
         v_cells,
         e_cells,
-        grid_cells: fineness.grid.0,
+        grid_cells,
         grid_e_cells: fineness.grid.1,
         s0: s_rest,
     };

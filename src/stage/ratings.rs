@@ -250,8 +250,8 @@ pub struct DrivenLoad {
     pub plate_watts: f64,
     pub screen_watts: f64,
     pub cathode_amperes: f64,
-    /// Most negative grid volts to the cathode.
-    pub v_gk_minimum: f64,
+    /// Mean grid volts to the cathode: the bias as drive has shifted it.
+    pub v_gk_mean: f64,
 }
 
 /// Checks of one stage under drive.
@@ -306,7 +306,7 @@ pub fn when_driven(
     );
     check(
         RatingKind::GridNegativeVolts,
-        (-load.v_gk_minimum).max(0.0),
+        (-load.v_gk_mean).max(0.0),
         r.grid_volts_minimum.filter(|v| v.0 < 0.0).map(|v| v.0),
         "grid_volts",
     );

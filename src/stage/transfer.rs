@@ -87,9 +87,17 @@ pub fn transfer_curve(amp: &Amplifier, k: usize) -> TransferCurve {
     let start = [v[d.plate] - cathode, v[d.cathode] - cathode, screen];
     let at = |grid: f64| solve_point(device, &s, grid, e, screen, start);
     let gain_at_rest = at(rest).over_v[0];
-    // From well past cutoff to well into conduction.
-    let depth = (2.2 * rest.abs()).max(1.5);
-    let (low, high) = (rest - depth, rest.max(0.0) + 0.25 * depth + 0.5);
+    // From well past cutoff to well into conduction; an unbypassed cathode rises with the grid and widens both.
+    let rise = s.r_k * (i[0] + i[1] + i[2]);
+    let v_gk = v[d.grid] - v[d.cathode];
+    let depth = (2.2 * v_gk.abs() + rise).max(1.5);
+    let low = rest - depth;
+    let mut high = rest + v_gk.abs() + 2.0 * rise + 0.5;
+    // The drive that a conducting grid asks of its source grows without bound: the picture ends at the depth.
+    let drive = |grid: f64| grid + drive_ohms * at(grid).currents.ig - rest;
+    while high > rest + 0.1 && drive(high) > 1.2 * depth {
+        high -= 0.02 * depth;
+    }
     let points: Vec<TransferPoint> = (0..CURVE_POINTS)
         .map(|n| {
             let grid = low + (high - low) * n as f64 / (CURVE_POINTS - 1) as f64;

@@ -55,14 +55,20 @@ pub fn study(prepared: &Prepared, watch: &Watch) -> Result<BiasStudy, StudyFault
     })
 }
 
-/// For each stage and rating the level at which it is used most.
+/// Highest input at which ratings are sought, in volts peak: above the hardest chord of a hot pickup. Chosen.
+const HARDEST_PLAYING_V: f64 = 1.0;
+
+/// For each stage and rating the level, up to [`HARDEST_PLAYING_V`], at which it is used most.
 pub fn worst_driven(
     amp: &Amplifier,
     levels: &[LevelFigures],
     setting: Option<f64>,
 ) -> Vec<RatingCheck> {
     let mut worst: Vec<RatingCheck> = Vec::new();
-    for level in levels {
+    for level in levels
+        .iter()
+        .filter(|l| l.input_v_peak <= HARDEST_PLAYING_V)
+    {
         let condition = Condition::Driven {
             input_v_peak: level.input_v_peak,
             setting,
@@ -72,7 +78,7 @@ pub fn worst_driven(
                 plate_watts: s.plate_watts,
                 screen_watts: s.screen_watts,
                 cathode_amperes: s.plate_amperes + s.screen_amperes + s.grid_amperes,
-                v_gk_minimum: s.v_gk_minimum,
+                v_gk_mean: s.v_gk_mean,
             };
             for check in ratings::when_driven(amp, k, &load, condition) {
                 keep_worst(&mut worst, check);

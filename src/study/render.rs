@@ -66,6 +66,8 @@ pub struct Sound {
 pub const LOW_TONES_HZ: [f64; 2] = [82.4, 220.0];
 /// Peak that the loudest file of a set reaches, in dB re full scale. Chosen: room for what lies between samples.
 const HEADROOM_DBFS: f64 = -1.0;
+/// A set whose loudest peak lies below this, in volts, is raised no further: silence stays silent. Chosen.
+const SILENT_BELOW_V: f64 = 1e-3;
 /// How far past onset the alias tone is played: 12 dB.
 const ALIAS_DRIVE: f64 = 3.981_071_705_534_972_5;
 /// A take that peaks below this, in dB re full scale, or above the next, is warned of. Chosen.
@@ -115,7 +117,14 @@ pub fn study(
         .collect();
     let models: Vec<Model> = rated
         .par_iter()
-        .map(|amp| Model::new(amp, figure_rate, tone::HIGHEST_LEVEL_V).map_err(StudyFault::from))
+        .map(|amp| {
+            Model::new(
+                amp,
+                figure_rate,
+                tone::HIGHEST_LEVEL_V.max(plan.test_level_v),
+            )
+            .map_err(StudyFault::from)
+        })
         .collect::<Result<_, _>>()?;
     let measured = AtomicUsize::new(0);
     let parts = jobs.len() as f64;
@@ -333,11 +342,7 @@ fn scale_set(
         .iter()
         .map(|s| peak(&s.terminals).max(peak(&s.listening)))
         .fold(0.0, f64::max);
-    let scale = if top > 0.0 {
-        10f64.powf(HEADROOM_DBFS / 20.0) / top
-    } else {
-        1.0
-    };
+    let scale = 10f64.powf(HEADROOM_DBFS / 20.0) / top.max(SILENT_BELOW_V);
     for sound in &mut sounds {
         for x in sound
             .terminals

@@ -67,7 +67,8 @@ pub struct StageLevel {
     pub plate_amperes: f64,
     pub screen_amperes: f64,
     pub grid_amperes: f64,
-    pub v_gk_minimum: f64,
+    /// Mean grid volts to the cathode.
+    pub v_gk_mean: f64,
     /// How far this stage has gone towards each limit; 1 is the limit.
     pub towards: Towards,
 }

@@ -45,7 +45,7 @@ pub fn figures(
                 plate_amperes: mean(trace, |o| o.ip),
                 screen_amperes: mean(trace, |o| o.is),
                 grid_amperes: mean(trace, |o| o.ig),
-                v_gk_minimum: trace.iter().fold(f64::INFINITY, |m, o| m.min(o.v_gk)),
+                v_gk_mean: mean(trace, |o| o.v_gk),
                 towards: reference.towards(trace),
             }
         })

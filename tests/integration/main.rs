@@ -5,6 +5,7 @@ mod broken_wavs;
 mod cli;
 mod demo_audio;
 mod measure_oracle;
+mod oracles;
 mod published_measures;
 mod published_tubes;
 mod report_bias;
