@@ -4,6 +4,8 @@ mod broken_designs;
 mod broken_wavs;
 mod cli;
 mod demo_audio;
+mod golden;
+mod layering;
 mod measure_oracle;
 mod oracles;
 mod published_measures;
