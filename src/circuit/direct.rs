@@ -38,12 +38,31 @@ const RESIDUAL_A: f64 = 1e-12;
 const FLOATING_LEAK_S: f64 = 1e-12;
 /// Iterations before an attempt is given up.
 const ITERATIONS: usize = 200;
+/// Smallest step of the drives, as a share of their full values.
+const SMALLEST_STEP_UP: f64 = 1e-4;
+/// Settling in time: first and last conductance of the capacitors' steps, in siemens; largest change a step may make,
+/// in volts; ohms of an inductor's step per siemens of a capacitor's; most steps. Chosen; only whether it arrives counts.
+const RELAX_FIRST_S: f64 = 1.0;
+const RELAX_LAST_S: f64 = 1e-13;
+const RELAX_LIMIT_V: f64 = 10.0;
+const RELAX_OHMS_PER_S: f64 = 1e4;
+const RELAX_STEPS: usize = 3000;
+/// Change of node volts that counts as none, in volts.
+const STEP_SETTLED_V: f64 = 1e-9;
+/// Full steps from a balanced point after which only rounding moves it: Newton doubles its digits at each.
+const BALANCED_STEPS: usize = 5;
+/// Roundings that a sum of a few currents gathers, in units of the largest term's last place.
+const ROUNDINGS: f64 = 8.0;
 
 /// Finds the voltages at which the currents at every node sum to zero.
 ///
 /// Unknowns are the free nodes' volts and the inductors' currents; Newton's method with a limited step
 /// and a line search on the sum of squared residuals. If that fails, all constant drives are stepped up
-/// from zero, each solution starting the next. `device(k, v_gk, v_sk, v_pk)` gives the currents of device `k`.
+/// from zero, each solution starting the next; if that fails too, the circuit is let settle in time, with a
+/// capacitor at every node (see [`System::relax`]). `device(k, v_gk, v_sk, v_pk)` gives the currents of device `k`.
+///
+/// Settled means balanced to 1e-12 A, or to the rounding of the currents where a small resistor on high
+/// volts makes that larger.
 ///
 /// # Errors
 /// [`NotSettled`] names the node that is worst out of balance.
@@ -58,28 +77,13 @@ pub fn solve(
     match system.newton(guess, 1.0, device, &mut iterations) {
         Ok(x) => Ok(system.rest(&x, device, iterations, false)),
         Err(_) => {
-            let mut x = DVector::zeros(system.size);
-            let mut scale = 0.0f64;
-            let mut step = 0.125f64;
-            while scale < 1.0 {
-                let next = (scale + step).min(1.0);
-                match system.newton(x.clone(), next, device, &mut iterations) {
-                    Ok(solved) => {
-                        x = solved;
-                        scale = next;
-                        step *= 1.5;
-                    }
-                    Err(failure) => {
-                        step *= 0.25;
-                        if step < 1e-6 {
-                            return Err(NotSettled {
-                                iterations,
-                                ..failure
-                            });
-                        }
-                    }
+            let x = match system.step_up(device, &mut iterations) {
+                Ok(x) => x,
+                Err(_) => {
+                    let relaxed = system.relax(system.guess(start), device, &mut iterations);
+                    system.newton(relaxed, 1.0, device, &mut iterations)?
                 }
-            }
+            };
             Ok(system.rest(&x, device, iterations, true))
         }
     }
@@ -255,6 +259,119 @@ impl<'a> System<'a> {
         f
     }
 
+    /// All constant drives from zero to full, each solution starting the next.
+    fn step_up(
+        &self,
+        device: &dyn Fn(usize, f64, f64, f64) -> Slopes,
+        iterations: &mut usize,
+    ) -> Result<DVector<f64>, NotSettled> {
+        let mut x = DVector::zeros(self.size);
+        let mut scale = 0.0f64;
+        let mut step = 0.125f64;
+        while scale < 1.0 {
+            let next = (scale + step).min(1.0);
+            match self.newton(x.clone(), next, device, iterations) {
+                Ok(solved) => {
+                    x = solved;
+                    scale = next;
+                    step *= 1.5;
+                }
+                Err(failure) => {
+                    step *= 0.25;
+                    if step < SMALLEST_STEP_UP {
+                        return Err(failure);
+                    }
+                }
+            }
+        }
+        Ok(x)
+    }
+
+    /// Lets the circuit settle in time: one capacitor from every node to ground, resistance in every inductor,
+    /// backward Euler steps of one Newton iteration each, longer while the volts move little.
+    ///
+    /// With conductance G = C/h the step solves (J + G) dx = -f; as h grows it becomes Newton's. Returns where
+    /// it got to, for Newton's method to finish.
+    fn relax(
+        &self,
+        mut x: DVector<f64>,
+        device: &dyn Fn(usize, f64, f64, f64) -> Slopes,
+        iterations: &mut usize,
+    ) -> DVector<f64> {
+        let nodes = self.index.iter().flatten().count();
+        let mut jacobian = DMatrix::zeros(self.size, self.size);
+        let mut g = RELAX_FIRST_S;
+        for _ in 0..RELAX_STEPS {
+            *iterations += 1;
+            let f = self.assemble(&x, 1.0, device, Some(&mut jacobian));
+            let mut held = jacobian.clone();
+            for k in 0..self.size {
+                // An inductor's row is its volts: L di/dt has the other sign there.
+                held[(k, k)] += if k < nodes { g } else { -RELAX_OHMS_PER_S * g };
+            }
+            let step = held.lu().solve(&(-&f));
+            let largest = step.as_ref().map_or(f64::INFINITY, |s| {
+                s.iter().take(nodes).fold(0.0f64, |m, d| m.max(d.abs()))
+            });
+            match step {
+                Some(step) if largest < RELAX_LIMIT_V => {
+                    x += step;
+                    g *= if largest < 0.25 * RELAX_LIMIT_V { 0.5 } else { 1.0 };
+                    if g < RELAX_LAST_S {
+                        break;
+                    }
+                }
+                _ => g *= 8.0,
+            }
+        }
+        x
+    }
+
+    /// Rounding that the sum of currents at each node (and the volts across each inductor) carries.
+    fn rounding(
+        &self,
+        x: &DVector<f64>,
+        scale: f64,
+        device: &dyn Fn(usize, f64, f64, f64) -> Slopes,
+    ) -> DVector<f64> {
+        let mut terms = DVector::zeros(self.size);
+        let mut add = |node: Node, amperes: f64| {
+            if let Some(row) = self.index[node] {
+                terms[row] += amperes;
+            }
+        };
+        let v = |node| self.volts(x, node, scale).abs();
+        for (p, current) in self.net.parts.iter().zip(&self.inductor) {
+            let amperes = match (p.kind, current) {
+                (PartKind::Resistor(r), _) => (v(p.a) + v(p.b)) / r,
+                (PartKind::Inductor(_), Some(k)) => x[*k].abs(),
+                _ => 0.0,
+            };
+            add(p.a, amperes);
+            add(p.b, amperes);
+        }
+        for (k, d) in self.net.devices.iter().enumerate() {
+            let electrodes = [d.grid, d.screen.unwrap_or(d.plate), d.plate];
+            let vk = self.volts(x, d.cathode, scale);
+            let [g, s, p] = electrodes.map(|n| self.volts(x, n, scale) - vk);
+            let slopes = device(k, g, s, p);
+            for e in 0..3 {
+                let amperes = slopes.i[e].abs()
+                    + (0..3)
+                        .map(|c| slopes.d[e][c].abs() * (v(electrodes[c]) + v(d.cathode)))
+                        .sum::<f64>();
+                add(electrodes[e], amperes);
+                add(d.cathode, amperes);
+            }
+        }
+        for (p, current) in self.net.parts.iter().zip(&self.inductor) {
+            if let Some(k) = current {
+                terms[*k] += v(p.a) + v(p.b);
+            }
+        }
+        terms * (ROUNDINGS * f64::EPSILON)
+    }
+
     fn newton(
         &self,
         mut x: DVector<f64>,
@@ -264,6 +381,7 @@ impl<'a> System<'a> {
     ) -> Result<DVector<f64>, NotSettled> {
         let nodes = self.index.iter().flatten().count();
         let mut jacobian = DMatrix::zeros(self.size, self.size);
+        let mut balanced_steps = 0;
         for _ in 0..ITERATIONS {
             *iterations += 1;
             let f = self.assemble(&x, scale, device, Some(&mut jacobian));
@@ -274,9 +392,21 @@ impl<'a> System<'a> {
             if !largest.is_finite() {
                 break;
             }
-            let balanced = f.amax() < RESIDUAL_A;
-            if balanced && largest < 1e-9 {
-                return Ok(x + step);
+            // The rounding is worth its sums only near the end.
+            let balanced = f.amax() < RESIDUAL_A
+                || f.amax() < 1e-6
+                    && self
+                        .rounding(&x, scale, device)
+                        .iter()
+                        .zip(f.iter())
+                        .all(|(rounding, f)| f.abs() < RESIDUAL_A + rounding);
+            if balanced {
+                balanced_steps += 1;
+                if largest < STEP_SETTLED_V || balanced_steps > BALANCED_STEPS {
+                    return Ok(x + step);
+                }
+            } else {
+                balanced_steps = 0;
             }
             let mut damping = (STEP_LIMIT_V / largest).min(1.0);
             let before = f.norm_squared();

@@ -60,6 +60,11 @@ impl Default for Fineness {
     }
 }
 
+/// Steps from one state after which the kernel's memories have followed it.
+const MEMORY_STEPS: usize = 6;
+/// Steps of Newton's method towards the silent rest, and how many of them take a Jacobian of their own.
+const SETTLE_ROUNDS: usize = 16;
+const SETTLE_JACOBIANS: usize = 2;
 /// Cathode current that counts as none when the surface's lower edge is sought, in amperes.
 const CUTOFF_A: f64 = 1e-8;
 
@@ -157,47 +162,61 @@ impl Model {
     }
 
     /// Newton's method on one silent step: the exact rest differs from the surfaces' by their interpolation error.
+    ///
+    /// The Jacobian is taken by differences twice and then kept: its error, about the share of a nudge, is what
+    /// each further step leaves of the one before. Ended by the last of those steps that still gains.
     fn settle(&mut self) -> Result<(), ModelFault> {
         use nalgebra::{DMatrix, DVector};
         let n = self.rest.len();
         let mut kernel = Kernel::<1>::new([self]);
-        let mut x = DVector::from_vec(self.rest.clone());
-        let mut drift = f64::INFINITY;
-        for _ in 0..6 {
-            let image = |kernel: &mut Kernel<1>, x: &DVector<f64>| {
+        // The memories that start iterations follow the state within a few steps.
+        let image = |kernel: &mut Kernel<1>, x: &DVector<f64>| {
+            for _ in 0..MEMORY_STEPS {
                 kernel.set_state(0, x.as_slice());
-                for _ in 0..3 {
-                    kernel.set_state(0, x.as_slice());
-                    kernel.step([0.0]);
-                }
-                DVector::from_vec(kernel.state(0))
-            };
-            kernel.recall_rest(self);
-            let base = image(&mut kernel, &x);
-            let f = &base - &x;
-            drift = f.amax();
-            let mut jacobian = DMatrix::zeros(n, n);
-            for k in 0..n {
-                let nudge = 1e-4 * x[k].abs().max(1e-3);
-                let mut y = x.clone();
-                y[k] += nudge;
-                let moved = image(&mut kernel, &y);
-                for r in 0..n {
-                    jacobian[(r, k)] = (moved[r] - base[r]) / nudge;
-                }
-                jacobian[(k, k)] -= 1.0;
+                kernel.step([0.0]);
             }
-            let Some(step) = jacobian.lu().solve(&f) else {
+            DVector::from_vec(kernel.state(0))
+        };
+        kernel.recall_rest(self);
+        let mut x = DVector::from_vec(self.rest.clone());
+        let mut f = image(&mut kernel, &x) - &x;
+        let mut tangent = None;
+        let mut smallest = f64::INFINITY;
+        for round in 0..SETTLE_ROUNDS {
+            if round < SETTLE_JACOBIANS {
+                let base = image(&mut kernel, &x);
+                let mut jacobian = DMatrix::zeros(n, n);
+                for k in 0..n {
+                    let nudge = 1e-4 * x[k].abs().max(1e-3);
+                    let mut y = x.clone();
+                    y[k] += nudge;
+                    let moved = image(&mut kernel, &y);
+                    for r in 0..n {
+                        jacobian[(r, k)] = (moved[r] - base[r]) / nudge;
+                    }
+                    jacobian[(k, k)] -= 1.0;
+                }
+                f = image(&mut kernel, &x) - &x;
+                tangent = Some(jacobian.lu());
+            }
+            let Some(step) = tangent.as_ref().and_then(|t| t.solve(&f)) else {
                 break;
             };
             if !step.amax().is_finite() {
                 break;
             }
-            x -= &step;
-            if step.amax() < 1e-9 {
+            let size = step
+                .iter()
+                .zip(&self.scales)
+                .fold(0.0f64, |m, (s, scale)| m.max(s.abs() / scale));
+            if round > SETTLE_JACOBIANS && size > 0.5 * smallest {
                 break;
             }
+            smallest = smallest.min(size);
+            x -= &step;
+            f = image(&mut kernel, &x) - &x;
         }
+        let drift = f.amax();
         self.rest = x.as_slice().to_vec();
         if drift.is_finite() && drift < 1e-3 {
             Ok(())
