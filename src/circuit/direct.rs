@@ -316,7 +316,11 @@ impl<'a> System<'a> {
             match step {
                 Some(step) if largest < RELAX_LIMIT_V => {
                     x += step;
-                    g *= if largest < 0.25 * RELAX_LIMIT_V { 0.5 } else { 1.0 };
+                    g *= if largest < 0.25 * RELAX_LIMIT_V {
+                        0.5
+                    } else {
+                        1.0
+                    };
                     if g < RELAX_LAST_S {
                         break;
                     }

@@ -7,6 +7,7 @@ use crate::circuit::PartKind;
 use crate::circuit::companion::{Network, Port, cut};
 use crate::stage::amplifier::Amplifier;
 use crate::stage::surface::{Extent, Surface, Surroundings};
+use crate::stage::wiring::LoadKind;
 
 /// Networks, surfaces and the rest state of an amplifier at one oversampled rate.
 #[derive(Clone, Debug)]
@@ -267,7 +268,13 @@ fn build_surface(
         .screen
         .map_or(0.0, |n| volts[n] + s.r_s * currents[1] - cathode);
     let supply = amp.supply_volts();
-    let e = if amp.drives_transformer(k) {
+    // An inductive loudspeaker throws the open-circuit volts far above the supply when the tube lets go.
+    let thrown = amp.drives_transformer(k)
+        && amp.load == LoadKind::Loudspeaker
+        && amp.design.load.loudspeaker.is_some();
+    let e = if thrown {
+        (-1.5 * supply, 9.0 * supply)
+    } else if amp.drives_transformer(k) {
         (-0.6 * supply, 3.6 * supply)
     } else {
         (0.05 * e_rest, (1.25 * supply).max(e_rest + 20.0))
@@ -300,7 +307,8 @@ fn build_surface(
     }
     let bottom = cutoff.min(v_rest - 1.0);
     let (v_cells, e_cells) = if device.has_screen_port() || amp.drives_transformer(k) {
-        fineness.pentode
+        let (v, e) = fineness.pentode;
+        (v, if thrown { 2 * e } else { e })
     } else {
         fineness.triode
     };
