@@ -4,7 +4,7 @@
 
 use std::path::PathBuf;
 
-use forehear::report::svg::{plate_svg, transfer_svg};
+use forehear::report::svg::plate_svg;
 use forehear::stage::resolve;
 use forehear::study::curve;
 use forehear::study::result::CurveStudy;
@@ -84,13 +84,6 @@ fn hold_against_recorded(name: &str, drawn: &str) {
 fn golden_plate_diagram_of_the_default_design_is_drawn_as_recorded() {
     let study = output_stage().expect("the default design has a rest");
     hold_against_recorded("corner-room-power-plate-curves.svg", &plate_svg(&study));
-}
-
-#[test]
-fn golden_transfer_curve_of_the_default_design_is_drawn_as_recorded() {
-    let study = output_stage().expect("the default design has a rest");
-    let drawn = transfer_svg(&study.design, std::slice::from_ref(&study.transfer));
-    hold_against_recorded("corner-room-power-transfer.svg", &drawn);
 }
 
 #[test]
