@@ -6,6 +6,7 @@ mod cli;
 mod demo_audio;
 mod golden;
 mod layering;
+mod laws;
 mod measure_oracle;
 mod oracles;
 mod published_measures;

@@ -1,0 +1,265 @@
+//! Periodic steady state: step, energy, waiting instead of shooting, aliases.
+
+use std::f64::consts::TAU;
+
+use forehear::measure::harmonics::HarmonicAnalysis;
+use forehear::render::{Kernel, Model};
+use forehear::resample::Oversampler;
+use forehear::signal::coherent_bin;
+use forehear::trial::steady::{Shooter, Tone};
+use forehear::trial::{alias, tone};
+use rayon::prelude::*;
+
+use super::{RATE_HZ, amplifier, default_amplifier, harmonics, settings, settled, shipped};
+
+/// How far THD may move when the step is halved, in points.
+const STEP_THD_POINTS: f64 = 0.01;
+/// A level at which every design is driven hard, in volts peak at the jack.
+const DRIVEN_V: f64 = 0.7;
+
+/// Name with setting and level, THD at 8 and at 16 times 48 kHz in percent.
+fn thd_at_two_rates() -> Vec<(String, f64, f64)> {
+    let jobs: Vec<_> = shipped()
+        .into_iter()
+        .flat_map(|(name, prepared)| {
+            settings(&prepared.design)
+                .into_iter()
+                .map(move |gain| (name, prepared.clone(), gain))
+        })
+        .collect();
+    jobs.par_iter()
+        .flat_map(|(name, prepared, gain)| {
+            let amp = amplifier(prepared, *gain);
+            let tone = Tone::new(tone::HEADLINE_HZ, RATE_HZ);
+            let finer = Tone {
+                steps: 2 * tone.steps,
+                ..tone
+            };
+            let at = |rate| Model::new(&amp, rate, 1.0).expect("the model comes to rest");
+            let (coarse, fine) = (at(RATE_HZ), at(2.0 * RATE_HZ));
+            let test_level = prepared.design.control.test_level.0;
+            [test_level, DRIVEN_V]
+                .into_iter()
+                .map(|level| {
+                    (
+                        format!("{name} {gain:?} {level} V"),
+                        harmonics(&settled(&coarse, tone, level).output).thd_percent,
+                        harmonics(&settled(&fine, finer, level).output).thd_percent,
+                    )
+                })
+                .collect::<Vec<_>>()
+        })
+        .collect()
+}
+
+#[test]
+fn halving_the_step_leaves_thd_alone() {
+    let figures = thd_at_two_rates();
+    for (name, coarse, fine) in &figures {
+        println!(
+            "{name}: THD {coarse:.4} % and {fine:.4} %, {:+.4} points",
+            fine - coarse
+        );
+    }
+    for (name, coarse, fine) in &figures {
+        let moved = (fine - coarse).abs();
+        assert!(moved < STEP_THD_POINTS, "{name}: {moved} points");
+    }
+}
+
+/// Share of the power that may be missing: rounding and the 10 uV to which a period closes.
+const ENERGY: f64 = 1e-4;
+
+/// What the rail delivers is what plate, copper, core and load take.
+///
+/// Over one step the trapezoidal rule is the network of the means of both ends, so its powers balance exactly and
+/// what capacitors and inductors take over a period is what their energy changes by: nothing. Currents are found
+/// back from the loudspeaker's volts through load, secondary copper and leakage, then held against the tube's.
+#[test]
+fn energy_of_the_output_stage_balances_over_a_cycle() {
+    let amp = default_amplifier();
+    let model = Model::new(&amp, RATE_HZ, 8.0).expect("the model comes to rest");
+    let iron = &amp.iron;
+    let k = amp.devices.len() - 1;
+    let c = amp.capacitances()[k];
+    let n = iron.turns_ratio;
+    let load = amp.design.load.resistance.0;
+    for (hz, level) in [(1000.0, 0.02), (1000.0, 0.2), (82.4, 0.2), (82.4, 0.7)] {
+        let tone = Tone::new(hz, RATE_HZ);
+        let mut shooter = Shooter::new(&model, tone);
+        assert!(shooter.steady(level).settled);
+        let kernel = shooter.kernel();
+        // Loudspeaker, plate, grid, cathode and rail volts, plate current.
+        let points: Vec<[f64; 6]> = (0..=tone.steps)
+            .map(|j| {
+                let turns = (j % tone.steps) as f64 / tone.steps as f64;
+                let out = kernel.step([level * (TAU * turns).sin()])[0];
+                let o = kernel.observe(k, 0);
+                let rail = kernel.rail(model.output_rail, 0);
+                [out, o.v_pk + o.v_k, o.v_gk + o.v_k, o.v_k, rail, o.ip]
+            })
+            .collect();
+        let h = 1.0 / RATE_HZ;
+        let mut delivered = 0.0;
+        // Plate, cathode's lift, load, secondary copper, core, primary copper, capacitances at the plate.
+        let mut taken = [0.0; 7];
+        let mut drawn = (0.0, 0.0);
+        for w in points.windows(2) {
+            let mean = |q: usize| 0.5 * (w[0][q] + w[1][q]);
+            let rate = |q: usize| (w[1][q] - w[0][q]) / h;
+            let secondary = mean(0) / (load * n);
+            let leaked = n * mean(0) + n * n * iron.secondary_resistance * secondary;
+            let core_volts = leaked + iron.leakage_inductance * rate(0) / (load * n);
+            // Core volts are counted from the rail: the primary's current flows from rail to plate.
+            let primary = (mean(4) + core_volts - mean(1)) / iron.primary_resistance;
+            let capacitive = iron.shunt_capacitance * rate(1)
+                + c.grid_plate * (rate(1) - rate(2))
+                + c.plate_cathode * (rate(1) - rate(3));
+            delivered += mean(4) * primary;
+            taken[0] += (mean(1) - mean(3)) * mean(5);
+            taken[1] += mean(3) * mean(5);
+            taken[2] += mean(0) * mean(0) / load;
+            taken[3] += iron.secondary_resistance * (mean(0) / load).powi(2);
+            taken[4] += core_volts * core_volts / iron.core_loss;
+            taken[5] += iron.primary_resistance * primary * primary;
+            taken[6] += mean(1) * capacitive;
+            drawn.0 += primary;
+            drawn.1 += mean(5);
+        }
+        let steps = tone.steps as f64;
+        let total: f64 = taken.iter().sum();
+        let missing = (delivered - total) / delivered;
+        println!(
+            "{hz} Hz {level} V: rail {:.5} W; plate {:.5}, cathode {:.5}, load {:.5}, copper {:.5} and {:.5}, core {:.5}, \
+             capacitances {:.2e} W; missing {missing:.2e}; direct current off by {:.2e}",
+            delivered / steps,
+            taken[0] / steps,
+            taken[1] / steps,
+            taken[2] / steps,
+            taken[3] / steps,
+            taken[5] / steps,
+            taken[4] / steps,
+            taken[6] / steps,
+            drawn.0 / drawn.1 - 1.0
+        );
+        assert!(missing.abs() < ENERGY, "{hz} Hz {level} V: {missing:e}");
+        assert!((drawn.0 / drawn.1 - 1.0).abs() < ENERGY);
+    }
+}
+
+/// Shooting against waiting, in points of THD.
+const WAITED_THD_POINTS: f64 = 0.01;
+/// Shooting against a render from 48 kHz and back to it, in points of THD.
+const CHAIN_THD_POINTS: f64 = 0.02;
+const WAITED_CYCLES: usize = 1500;
+
+#[test]
+fn shooting_meets_fifteen_hundred_cycles_of_waiting() {
+    let model = Model::new(&default_amplifier(), RATE_HZ, 8.0).expect("the model comes to rest");
+    let tone = Tone::new(1000.0, RATE_HZ);
+    let figures: Vec<(f64, f64, f64)> = [0.01, 0.05, 0.2, 0.7]
+        .into_par_iter()
+        .map(|level| {
+            let shot = harmonics(&settled(&model, tone, level).output).thd_percent;
+            let mut kernel = Kernel::<1>::new([&model]);
+            let mut period = vec![0.0; tone.steps];
+            for _ in 0..WAITED_CYCLES {
+                for (n, y) in period.iter_mut().enumerate() {
+                    let turns = n as f64 / tone.steps as f64;
+                    *y = kernel.step([level * (TAU * turns).sin()])[0];
+                }
+            }
+            (level, shot, harmonics(&period).thd_percent)
+        })
+        .collect();
+    for (level, shot, waited) in &figures {
+        println!(
+            "{level} V: shooting {shot:.4} %, waiting {waited:.4} %, {:+.4} points",
+            shot - waited
+        );
+    }
+    for (level, shot, waited) in &figures {
+        assert!((shot - waited).abs() < WAITED_THD_POINTS, "{level} V");
+    }
+}
+
+#[test]
+fn shooting_meets_a_render_through_the_resampler() {
+    const BASE_HZ: f64 = 48e3;
+    const WINDOW: usize = 8192;
+    const WINDOWS: usize = 12;
+    let model = Model::new(&default_amplifier(), RATE_HZ, 8.0).expect("the model comes to rest");
+    let (bin, hz) = coherent_bin(1000.0, BASE_HZ, WINDOW);
+    let figures: Vec<(f64, f64, f64)> = [0.01, 0.05, 0.2, 0.7]
+        .into_par_iter()
+        .map(|level| {
+            let input: Vec<f64> = (0..WINDOW * WINDOWS)
+                .map(|n| {
+                    let turns = (bin * n % WINDOW) as f64 / WINDOW as f64;
+                    level * (TAU * turns).sin()
+                })
+                .collect();
+            let mut kernel = Kernel::<1>::new([&model]);
+            let output = Oversampler::new(8)
+                .expect("a factor of 8")
+                .process(&input, |block| {
+                    for x in block {
+                        *x = kernel.step([*x])[0];
+                    }
+                })
+                .expect("finite");
+            // The last window but one: the last ends with the clip.
+            let window = &output[WINDOW * (WINDOWS - 2)..WINDOW * (WINDOWS - 1)];
+            let rendered = HarmonicAnalysis::of_periods(window, bin, 10)
+                .and_then(|a| a.report())
+                .expect("a tone comes out")
+                .thd_percent;
+            let shot = settled(&model, Tone::new(hz, RATE_HZ), level);
+            (level, harmonics(&shot.output).thd_percent, rendered)
+        })
+        .collect();
+    for (level, shot, rendered) in &figures {
+        println!(
+            "{level} V: shooting {shot:.4} %, rendered {rendered:.4} %, {:+.4} points",
+            shot - rendered
+        );
+    }
+    for (level, shot, rendered) in &figures {
+        assert!((shot - rendered).abs() < CHAIN_THD_POINTS, "{level} V");
+    }
+}
+
+/// Worst line below 20 kHz that is no harmonic, in dB re the fundamental: what must be reached.
+const ALIAS_DBC: f64 = -80.0;
+
+#[test]
+fn aliases_stay_eighty_db_below_the_tone() {
+    let amp = default_amplifier();
+    let model = Model::new(&amp, RATE_HZ, tone::HIGHEST_LEVEL_V).expect("the model comes to rest");
+    let onset = tone::run(&amp, &model, tone::HEADLINE_HZ, 0.2)
+        .onset
+        .expect("the default design clips")
+        .input_v_peak;
+    println!("onset {onset:.5} V");
+    let cases: Vec<(f64, f64)> = [1200.0, 2600.0, 4100.0]
+        .into_iter()
+        .flat_map(|hz| [-12.0, 0.0, 12.0].map(|db| (hz, db)))
+        .collect();
+    let found: Vec<_> = cases
+        .par_iter()
+        .map(|&(hz, db)| {
+            let level = onset * 10f64.powf(db / 20.0);
+            (hz, db, alias::measure(&model, hz, level, 48e3))
+        })
+        .collect();
+    for (hz, db, alias) in &found {
+        println!(
+            "{hz} Hz {db:+} dB re onset: {:?} dBc at {:?} Hz",
+            alias.worst_dbc, alias.worst_hz
+        );
+    }
+    for (hz, db, alias) in &found {
+        let worst = alias.worst_dbc.expect("the tone settles");
+        assert!(worst <= ALIAS_DBC, "{hz} Hz {db:+} dB: {worst} dBc");
+    }
+}
