@@ -74,7 +74,7 @@ pub struct Sample {
 }
 
 /// A point of the table found once and used for several quantities.
-#[derive(Clone, Copy, Debug)]
+#[derive(Clone, Copy, Debug, Default)]
 pub struct Spot {
     cell: usize,
     tx: f64,

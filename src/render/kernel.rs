@@ -1,75 +1,10 @@
 //! Stagewise port reduction: one oversampled step of a whole amplifier, in several lanes at once.
 
-use std::sync::Arc;
-
+use super::cell::{Cell, Observation, Open, Reach, Tally};
+use super::lanes::V;
 use super::model::{Model, instantaneous};
 use super::network::Block;
 use crate::circuit::companion::{Input, Port};
-use crate::stage::surface::Surface;
-
-/// A grid voltage counts as found when Newton's last step was smaller than this, in volts.
-///
-/// The currents are carried on along their slopes by that step, so what remains is half their curvature
-/// times its square: below 1e-10 A for every tube of the catalog.
-const GRID_SETTLED_V: f64 = 3e-4;
-const GRID_ITERATIONS: usize = 40;
-
-/// What one tube does at one sample.
-#[derive(Clone, Copy, Debug, Default, PartialEq)]
-pub struct Observation {
-    /// Volts to the cathode.
-    pub v_gk: f64,
-    pub v_sk: f64,
-    pub v_pk: f64,
-    /// Cathode to ground.
-    pub v_k: f64,
-    /// Currents of the tube itself, capacitances left out.
-    pub ip: f64,
-    pub is: f64,
-    pub ig: f64,
-}
-
-#[derive(Clone)]
-struct Cell {
-    surface: Arc<Surface>,
-    z_pp: f64,
-    /// From this plate to the next grid and back, and the next grid's own; 0 for the last stage.
-    z_pg: f64,
-    z_gp: f64,
-    z_gg_own: f64,
-    r_k: f64,
-    r_k_folded: f64,
-    r_s: f64,
-    g_gp: f64,
-    g_gk: f64,
-    g_pk: f64,
-    // states
-    w_gp: f64,
-    w_gk: f64,
-    w_pk: f64,
-    v_last: f64,
-    v_before: f64,
-    ig_last: f64,
-    ig_before: f64,
-    cap_last: f64,
-    cap_before: f64,
-    is_last: f64,
-    dp_last: f64,
-    // this sample
-    v: f64,
-    e: f64,
-    ek: f64,
-    es: f64,
-    ip: f64,
-    is: f64,
-    ig: f64,
-    vp: f64,
-    vk: f64,
-    slope: f64,
-    v_over_e: f64,
-    ig_over_e: f64,
-    next_estimate: f64,
-}
 
 /// Where a stage's ports lie: block and port.
 #[derive(Clone, Copy)]
@@ -89,7 +24,7 @@ pub struct Kernel<const L: usize> {
     rail_volts: Vec<[f64; L]>,
     /// The block in which the load lies.
     output: usize,
-    cells: Vec<[Cell; L]>,
+    cells: Vec<Cell<L>>,
     ports: Vec<Ports>,
     output_rail: usize,
     per_turns_ratio: [f64; L],
@@ -101,22 +36,6 @@ pub struct Kernel<const L: usize> {
     wide: bool,
     /// Looks at a surface so far: what a render costs beside its networks.
     pub looks: u64,
-}
-
-/// Largest step of the grid's iteration, in volts: keeps the corner of conduction from throwing it.
-const STEP_LIMIT_V: f64 = 20.0;
-
-/// A step within [`STEP_LIMIT_V`]; not-a-number passes through.
-#[inline(always)]
-#[allow(clippy::manual_clamp)] // two compares are half of what `clamp` compiles to
-fn bounded(step: f64) -> f64 {
-    if step > STEP_LIMIT_V {
-        STEP_LIMIT_V
-    } else if step < -STEP_LIMIT_V {
-        -STEP_LIMIT_V
-    } else {
-        step
-    }
 }
 
 impl<const L: usize> Kernel<L> {
@@ -151,59 +70,20 @@ impl<const L: usize> Kernel<L> {
         let impedance = |a: Port, b: Port, l: usize| instantaneous(&models[l].networks, a, b);
         let cells = (0..stages)
             .map(|k| {
-                std::array::from_fn(|l| {
-                    let m = models[l];
-                    let surface = m.surfaces[k].clone();
-                    let s = surface.surroundings;
-                    let w = &m.rest[offset + 3 * k..offset + 3 * k + 3];
-                    let (plate, grid) = (Port::Plate(k), Port::Grid(k + 1));
-                    let has_next = k + 1 < stages;
-                    Cell {
-                        z_pp: s.z_pp,
-                        z_pg: if has_next {
-                            impedance(plate, grid, l)
-                        } else {
-                            0.0
-                        },
-                        z_gp: if has_next {
-                            impedance(grid, plate, l)
-                        } else {
-                            0.0
-                        },
-                        z_gg_own: impedance(Port::Grid(k), Port::Grid(k), l),
-                        r_k: s.r_k,
-                        r_k_folded: s.r_k / (1.0 + s.r_k * s.g_gk),
-                        r_s: s.r_s,
-                        g_gp: s.g_gp,
-                        g_gk: s.g_gk,
-                        g_pk: s.g_pk,
-                        surface,
-                        w_gp: w[0],
-                        w_gk: w[1],
-                        w_pk: w[2],
-                        v_last: 0.0,
-                        v_before: 0.0,
-                        ig_last: 0.0,
-                        ig_before: 0.0,
-                        cap_last: 0.0,
-                        cap_before: 0.0,
-                        is_last: 0.0,
-                        dp_last: 0.0,
-                        v: 0.0,
-                        e: 0.0,
-                        ek: 0.0,
-                        es: 0.0,
-                        ip: 0.0,
-                        is: 0.0,
-                        ig: 0.0,
-                        vp: 0.0,
-                        vk: 0.0,
-                        slope: 0.0,
-                        v_over_e: 0.0,
-                        ig_over_e: 0.0,
-                        next_estimate: 0.0,
-                    }
-                })
+                let between = |a: Port, b: Port| V::from_fn(|l| impedance(a, b, l));
+                let (plate, next, own) = (Port::Plate(k), Port::Grid(k + 1), Port::Grid(k));
+                let reach = Reach {
+                    z_pg: between(plate, next),
+                    z_gp: between(next, plate),
+                    z_gg_own: between(own, own),
+                };
+                let surfaces = std::array::from_fn(|l| models[l].surfaces[k].clone());
+                let mut cell = Cell::new(surfaces, reach);
+                for (l, model) in models.iter().enumerate() {
+                    let w = &model.rest[offset + 3 * k..];
+                    cell.set_state(l, [w[0], w[1], w[2]]);
+                }
+                cell
             })
             .collect();
         let rails = first.rails;
@@ -233,50 +113,37 @@ impl<const L: usize> Kernel<L> {
             wide: std::arch::is_x86_feature_detected!("avx"),
             looks: 0,
         };
-        for (l, model) in models.iter().enumerate() {
-            kernel.remember_rest(l, model);
-        }
+        kernel.remember_rest(models);
         kernel
     }
 
     /// Fills the memories that only start iterations with their values at rest.
-    fn remember_rest(&mut self, l: usize, model: &Model) {
-        for (k, rest) in model.stage_rest.iter().enumerate() {
-            let cell = &mut self.cells[k][l];
-            let rise = cell.r_k * (rest.ip + rest.is);
-            cell.v_last = rest.v_gk + rise;
-            cell.v_before = cell.v_last;
-            (cell.ig_last, cell.ig_before) = (0.0, 0.0);
-            (cell.cap_last, cell.cap_before) = (0.0, 0.0);
-            cell.is_last = rest.is;
-            cell.dp_last = 0.0;
+    fn remember_rest(&mut self, models: [&Model; L]) {
+        for (l, model) in models.iter().enumerate() {
+            for (cell, rest) in self.cells.iter_mut().zip(&model.stage_rest) {
+                cell.remember_rest(l, rest);
+            }
         }
-        // Two passes settle what the rails are believed to deliver.
-        for r in 0..self.draw_last.len() {
-            self.draw_last[r][l] = 0.0;
-            self.draw_before[r][l] = 0.0;
-        }
-        let state = self.state(l);
+        self.draw_last.fill([0.0; L]);
+        self.draw_before.fill([0.0; L]);
+        // A few passes from the same states settle what the rails are believed to deliver.
+        let states: [Vec<f64>; L] = std::array::from_fn(|l| self.state(l));
         for _ in 0..4 {
-            let mut input = [0.0; L];
-            input[l] = 0.0;
-            self.step(input);
-            self.set_state(l, &state);
-            for cell in &mut self.cells {
-                cell[l].v_before = cell[l].v_last;
-                cell[l].ig_before = cell[l].ig_last;
-                cell[l].cap_before = cell[l].cap_last;
+            self.step([0.0; L]);
+            for (l, state) in states.iter().enumerate() {
+                self.set_state(l, state);
+                for cell in &mut self.cells {
+                    cell.hold_still(l);
+                }
             }
-            for r in 0..self.draw_last.len() {
-                self.draw_before[r][l] = self.draw_last[r][l];
-            }
+            self.draw_before.clone_from(&self.draw_last);
         }
         self.strayed = 0;
     }
 
-    /// Returns the first lane's memories to rest.
+    /// Returns the memories of every lane to the rest of `model`, the states staying as they are.
     pub fn recall_rest(&mut self, model: &Model) {
-        self.remember_rest(0, model);
+        self.remember_rest([model; L]);
     }
 
     /// Puts every lane at its model's rest.
@@ -284,9 +151,7 @@ impl<const L: usize> Kernel<L> {
         for (l, model) in models.iter().enumerate() {
             self.set_state(l, &model.rest);
         }
-        for (l, model) in models.iter().enumerate() {
-            self.remember_rest(l, model);
-        }
+        self.remember_rest(models);
     }
 
     /// Every state of one lane: networks, supply, then the tubes' capacitances.
@@ -296,7 +161,7 @@ impl<const L: usize> Kernel<L> {
             all.extend(b.x.iter().map(|x| x[l]));
         }
         for c in &self.cells {
-            all.extend([c[l].w_gp, c[l].w_gk, c[l].w_pk]);
+            all.extend(c.state(l));
         }
         all
     }
@@ -311,9 +176,7 @@ impl<const L: usize> Kernel<L> {
             }
         }
         for c in &mut self.cells {
-            c[l].w_gp = next();
-            c[l].w_gk = next();
-            c[l].w_pk = next();
+            c.set_state(l, [next(), next(), next()]);
         }
     }
 
@@ -323,20 +186,7 @@ impl<const L: usize> Kernel<L> {
 
     /// What stage `k` of lane `l` did at the last step.
     pub fn observe(&self, k: usize, l: usize) -> Observation {
-        let c = &self.cells[k][l];
-        Observation {
-            v_gk: c.v - c.vk,
-            v_sk: if c.surface.has_screen() {
-                c.es - c.r_s * c.is - c.vk
-            } else {
-                c.vp - c.vk
-            },
-            v_pk: c.vp - c.vk,
-            v_k: c.ek + c.vk,
-            ip: c.ip - c.g_gp * (c.vp - c.v) - c.g_pk * (c.vp - c.vk),
-            is: c.is,
-            ig: c.ig,
-        }
+        self.cells[k].observe(l)
     }
 
     /// Rail volts at the last step.
@@ -386,9 +236,12 @@ impl<const L: usize> Kernel<L> {
             }
             b.before();
         }
+        let mut tally = Tally::default();
         for k in 0..self.cells.len() {
-            self.solve_stage(k);
+            self.solve_stage(k, &mut tally);
         }
+        self.looks += tally.looks;
+        self.strayed += tally.strayed;
         // Backward, so that each stage is settled with the final current of the grid behind it.
         for k in (0..self.cells.len()).rev() {
             self.finish_stage(k);
@@ -411,137 +264,41 @@ impl<const L: usize> Kernel<L> {
         std::array::from_fn(|l| (top[l] - rail[l]) * self.per_turns_ratio[l])
     }
 
-    /// Finds the grid of stage `k` and with it all its currents, the next grid's current being estimated.
+    /// Solves stage `k`, the stages before it being solved, the next grid's current being estimated.
     #[inline(always)]
-    fn solve_stage(&mut self, k: usize) {
+    fn solve_stage(&mut self, k: usize, tally: &mut Tally) {
         let ports = self.ports[k];
+        let at = |(block, port): (usize, usize)| V(*self.blocks[block].open(port));
+        let open = Open {
+            grid: at(ports.grid),
+            plate: at(ports.plate),
+            cathode: at(ports.cathode),
+            screen: ports.screen.map(at),
+        };
         let (before, from_k) = self.cells.split_at_mut(k);
         let (own, after) = from_k.split_first_mut().expect("stage k exists");
-        for l in 0..L {
-            let c = &mut own[l];
-            let next = after.first().map(|n| &n[l]);
-            let estimate = next.map_or(0.0, |n| {
-                let conducted = 2.0 * n.ig_last - n.ig_before;
-                (if conducted > 0.0 { conducted } else { 0.0 }) + 2.0 * n.cap_last - n.cap_before
-            });
-            c.next_estimate = estimate;
-            let mut p = self.blocks[ports.grid.0].open(ports.grid.1)[l];
-            let mut r = c.z_gg_own;
-            if let Some(previous) = before.last() {
-                let q = &previous[l];
-                let plate_current = q.ip + q.g_gp * q.w_gp - q.g_pk * q.w_pk;
-                p -= q.z_gp * (plate_current + q.slope * q.z_pg * q.next_estimate);
-                r -= q.z_gp * q.z_pg * q.slope;
-            }
-            let ek = self.blocks[ports.cathode.0].open(ports.cathode.1)[l]
-                - c.r_k * (c.g_gk * c.w_gk + c.g_pk * c.w_pk);
-            let e = self.blocks[ports.plate.0].open(ports.plate.1)[l]
-                - c.z_pg * estimate
-                - c.z_pp * (c.g_gp * c.w_gp - c.g_pk * c.w_pk)
-                - ek;
-            p += r * (c.g_gp * c.w_gp + c.g_gk * c.w_gk) - ek;
-            c.ek = ek;
-            c.e = e;
-            let surface = &*c.surface;
-            let (mut shift, mut ds) = (0.0, 0.0);
-            if let Some(screen) = ports.screen {
-                c.es = self.blocks[screen.0].open(screen.1)[l] - ek;
-                ds = c.es - surface.extent.s0;
-                shift = ds * surface.per_screen_volt;
-            }
-            let lift = ds * c.dp_last;
-
-            let mut v = if r > 0.0 {
-                2.0 * c.v_last - c.v_before
-            } else {
-                p
-            };
-            let mut settled = false;
-            let mut spot = None;
-            for _ in 0..GRID_ITERATIONS {
-                self.looks += 1;
-                let (plate, found) = surface.plate(v + shift, e);
-                spot = Some(found);
-                let ip = plate.f + lift;
-                let grid = surface.grid(v, e);
-                let vp = e - c.z_pp * ip;
-                let vp_v = -c.z_pp * plate.fx;
-                let vp_e = 1.0 - c.z_pp * plate.fy;
-                let vk = c.r_k_folded * (ip - c.g_gp * (vp - v) + c.is_last + grid.f + c.g_gk * v);
-                let vk_v = c.r_k_folded * (plate.fx - c.g_gp * (vp_v - 1.0) + grid.fx + c.g_gk);
-                let vk_e = c.r_k_folded * (plate.fy - c.g_gp * vp_e + grid.fy);
-                let f = v - p + r * (grid.f + c.g_gp * (v - vp) + c.g_gk * (v - vk));
-                let f_v = 1.0 + r * (grid.fx + c.g_gp * (1.0 - vp_v) + c.g_gk * (1.0 - vk_v));
-                let f_e = r * (grid.fy - c.g_gp * vp_e - c.g_gk * vk_e);
-                let per_slope = 1.0 / f_v;
-                let step = bounded(-f * per_slope);
-                v += step;
-                if step < GRID_SETTLED_V && step > -GRID_SETTLED_V {
-                    c.ip = ip + plate.fx * step;
-                    let ig = grid.f + grid.fx * step;
-                    c.ig = if ig > 0.0 { ig } else { 0.0 };
-                    c.v_over_e = -f_e * per_slope;
-                    c.slope = plate.fy + plate.fx * c.v_over_e;
-                    c.ig_over_e = grid.fy + grid.fx * c.v_over_e;
-                    settled = true;
-                    break;
-                }
-            }
-            // Below its lower edge the tube is off and the surface's straight continuation exact.
-            if !settled || !surface.covers(v.max(surface.extent.v.0), e) {
-                self.strayed += 1;
-            }
-            c.v = v;
-            if let (true, Some(spot)) = (surface.has_screen(), spot) {
-                let (is, dp, ds_is) = surface.screen(&spot);
-                let is = is + ds * ds_is;
-                c.is = if is > 0.0 { is } else { 0.0 };
-                c.dp_last = dp;
-            }
-            c.vp = c.e - c.z_pp * c.ip;
-            c.vk = c.r_k_folded * (c.ip - c.g_gp * (c.vp - c.v) + c.is + c.ig + c.g_gk * c.v);
-        }
+        let foreseen = after.first().map_or(V::ZERO, Cell::foreseen);
+        own.solve(&open, before.last().map(Cell::hand_on), foreseen, tally);
     }
 
-    /// Settles stage `k` with the next grid's true current, hands its currents to the networks, moves its states on.
+    /// Settles stage `k`, the stage behind it being settled, and hands its currents to the networks.
     #[inline(always)]
     fn finish_stage(&mut self, k: usize) {
         let ports = self.ports[k];
         let (upto, after) = self.cells.split_at_mut(k + 1);
         let own = &mut upto[k];
-        for l in 0..L {
-            let c = &mut own[l];
-            if let Some(next) = after.first() {
-                let n = &next[l];
-                // The stage behind is settled already: its memories hold this sample's currents.
-                let change = -c.z_pg * (n.ig_last + n.cap_last - c.next_estimate);
-                c.ip += c.slope * change;
-                c.v += c.v_over_e * change;
-                let ig = c.ig + c.ig_over_e * change;
-                c.ig = if ig > 0.0 { ig } else { 0.0 };
-                c.e += change;
-                c.vp = c.e - c.z_pp * c.ip;
-                c.vk = c.r_k_folded * (c.ip - c.g_gp * (c.vp - c.v) + c.is + c.ig + c.g_gk * c.v);
-            }
-            let capacitive = c.g_gp * (c.v - c.vp - c.w_gp) + c.g_gk * (c.v - c.vk - c.w_gk);
-            let grid = c.ig + capacitive;
-            let plate = c.ip + c.g_gp * c.w_gp - c.g_pk * c.w_pk;
-            self.blocks[ports.grid.0].i[ports.grid.1][l] = grid;
-            self.blocks[ports.plate.0].i[ports.plate.1][l] = plate;
-            if let Some(screen) = ports.screen {
-                self.blocks[screen.0].i[screen.1][l] = c.is;
-            }
-            self.blocks[ports.cathode.0].i[ports.cathode.1][l] = -(grid + plate + c.is);
-            c.w_gp = 2.0 * (c.v - c.vp) - c.w_gp;
-            c.w_gk = 2.0 * (c.v - c.vk) - c.w_gk;
-            c.w_pk = 2.0 * (c.vp - c.vk) - c.w_pk;
-            c.v_before = c.v_last;
-            c.v_last = c.v;
-            c.ig_before = c.ig_last;
-            c.ig_last = c.ig;
-            c.cap_before = c.cap_last;
-            c.cap_last = capacitive;
-            c.is_last = c.is;
+        if let Some(next) = after.first() {
+            own.correct(next.taken());
+        }
+        let drawn = own.advance();
+        let mut give = |(block, port): (usize, usize), amperes: V<L>| {
+            self.blocks[block].i[port] = amperes.0;
+        };
+        give(ports.grid, drawn.grid);
+        give(ports.plate, drawn.plate);
+        give(ports.cathode, drawn.cathode);
+        if let Some(screen) = ports.screen {
+            give(screen, drawn.screen);
         }
     }
 }

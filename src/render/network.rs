@@ -6,6 +6,17 @@ use crate::circuit::companion::{Form, Input, Network};
 /// Rows are kept in groups of this many, padded with zeros, so that they go through the processor side by side.
 const GROUP: usize = 4;
 
+/// The rows of one group in every lane.
+type Rows<const L: usize> = [[f64; L]; GROUP];
+
+/// The coefficients of one group of rows, column by column.
+struct Group<const L: usize> {
+    constant: Rows<L>,
+    states: Vec<Rows<L>>,
+    inputs: Vec<Rows<L>>,
+    currents: Vec<Rows<L>>,
+}
+
 /// Quantities in, rows out; both small and dense.
 ///
 /// The rows of a network are its open ports, the next values of its states, what it draws from each rail,
@@ -19,15 +30,11 @@ pub struct Block<const L: usize> {
     /// Rails that this network draws from.
     pub draws: Vec<usize>,
     pub watches: bool,
-    groups: usize,
-    /// Columns: states, inputs, constant.
-    known: Vec<[[f64; L]; GROUP]>,
-    /// Columns: port currents.
-    currents: Vec<[[f64; L]; GROUP]>,
+    groups: Vec<Group<L>>,
     pub x: Vec<[f64; L]>,
     pub u: Vec<[f64; L]>,
     pub i: Vec<[f64; L]>,
-    rows: Vec<[[f64; L]; GROUP]>,
+    rows: Vec<Rows<L>>,
 }
 
 impl<const L: usize> Block<L> {
@@ -49,43 +56,34 @@ impl<const L: usize> Block<L> {
         let lanes: Vec<Vec<Form>> = models.iter().map(|m| forms(&m.networks[n])).collect();
         let count = lanes[0].len();
         let groups = count.div_ceil(GROUP);
-        let column = |pick: &dyn Fn(&Form) -> f64| -> Vec<[[f64; L]; GROUP]> {
-            (0..groups)
-                .map(|g| {
-                    std::array::from_fn(|r| {
-                        let row = g * GROUP + r;
-                        std::array::from_fn(|l| {
-                            if row < count {
-                                pick(&lanes[l][row])
-                            } else {
-                                0.0
-                            }
-                        })
-                    })
-                })
-                .collect()
+        // A port's own open volts leave its current out: that is what the tube is solved behind.
+        let entry = |row: usize, column: usize, l: usize| -> f64 {
+            let Some(form) = lanes[l].get(row) else {
+                return 0.0;
+            };
+            if column < nx {
+                form.states[column]
+            } else if column < nx + nu {
+                form.inputs[column - nx]
+            } else if row < np {
+                0.0
+            } else {
+                form.ports[column - nx - nu]
+            }
         };
-        let mut known = Vec::new();
-        for k in 0..nx {
-            known.extend(column(&|f| f.states[k]));
-        }
-        for k in 0..nu {
-            known.extend(column(&|f| f.inputs[k]));
-        }
-        known.extend(column(&|f| f.constant));
-        let mut currents = Vec::new();
-        for k in 0..np {
-            // A port's own open volts leave its current out: that is what the tube is solved behind.
-            let own = column(&|f| f.ports[k]);
-            currents.extend(own.into_iter().enumerate().map(|(g, mut rows)| {
-                for (r, row) in rows.iter_mut().enumerate() {
-                    if g * GROUP + r < np {
-                        *row = [0.0; L];
-                    }
-                }
-                rows
-            }));
-        }
+        let column = |g: usize, k: usize| -> Rows<L> {
+            std::array::from_fn(|r| std::array::from_fn(|l| entry(g * GROUP + r, k, l)))
+        };
+        let groups = (0..groups)
+            .map(|g| Group {
+                constant: std::array::from_fn(|r| {
+                    std::array::from_fn(|l| lanes[l].get(g * GROUP + r).map_or(0.0, |f| f.constant))
+                }),
+                states: (0..nx).map(|k| column(g, k)).collect(),
+                inputs: (nx..nx + nu).map(|k| column(g, k)).collect(),
+                currents: (nx + nu..nx + nu + np).map(|k| column(g, k)).collect(),
+            })
+            .collect();
         Block {
             states: nx,
             inputs: network.inputs.clone(),
@@ -93,52 +91,45 @@ impl<const L: usize> Block<L> {
             draws: network.draws.iter().map(|(r, _)| *r).collect(),
             watches: !network.watched.is_empty(),
             groups,
-            known,
-            currents,
             x: (0..nx)
                 .map(|k| std::array::from_fn(|l| models[l].rest[first_state + k]))
                 .collect(),
             u: vec![[0.0; L]; nu],
             i: vec![[0.0; L]; np],
-            rows: vec![[[0.0; L]; GROUP]; groups],
+            rows: vec![[[0.0; L]; GROUP]; count.div_ceil(GROUP)],
         }
     }
 
+    /// `sum` plus every column times its quantity; the sum stays in registers.
     #[inline(always)]
-    fn add(rows: &mut [[[f64; L]; GROUP]], column: &[[[f64; L]; GROUP]], q: &[f64; L]) {
-        for (row, c) in rows.iter_mut().zip(column) {
+    fn add(mut sum: Rows<L>, columns: &[Rows<L>], quantities: &[[f64; L]]) -> Rows<L> {
+        for (c, q) in columns.iter().zip(quantities) {
             for r in 0..GROUP {
                 for l in 0..L {
-                    row[r][l] += c[r][l] * q[l];
+                    sum[r][l] += c[r][l] * q[l];
                 }
             }
         }
+        sum
     }
 
     /// Sums what is known before the tubes are solved.
     #[inline(always)]
     pub fn before(&mut self) {
-        let g = self.groups;
-        let width = self.states + self.u.len();
-        for (row, c) in self.rows.iter_mut().zip(&self.known[width * g..]) {
-            *row = *c;
-        }
-        // Plain counting: splitting into chunks of a length known only here costs a division each time.
-        let mut at = 0;
-        for q in self.x.iter().chain(&self.u) {
-            Self::add(&mut self.rows, &self.known[at..at + g], q);
-            at += g;
+        for (rows, g) in self.rows.iter_mut().zip(&self.groups) {
+            *rows = Self::add(
+                Self::add(g.constant, &g.states, &self.x),
+                &g.inputs,
+                &self.u,
+            );
         }
     }
 
     /// Adds the port currents and moves the states on.
     #[inline(always)]
     pub fn after(&mut self) {
-        let g = self.groups;
-        let mut at = 0;
-        for q in &self.i {
-            Self::add(&mut self.rows, &self.currents[at..at + g], q);
-            at += g;
+        for (rows, g) in self.rows.iter_mut().zip(&self.groups) {
+            *rows = Self::add(*rows, &g.currents, &self.i);
         }
         for (k, x) in self.x.iter_mut().enumerate() {
             let row = self.ports + k;
