@@ -62,7 +62,7 @@ def trapezoidal(net, system, rest, burst, rate):
             rhs += r * (g * vc + ic - g * fixed(a, b, s))
         for (r, a, b, g, k), vl, il in zip(coils, coil_v, i_l):
             rhs -= r * (k * il + g * vl + g * fixed(a, b, s))
-        for _ in range(40):
+        def residual(v):
             f, J = G @ v - rhs, G.copy()
             for electrodes, cathode, law in ports:
                 control = [0.0 if e is None else across(e[0], e[1], cathode, v, s) for e in electrodes]
@@ -74,12 +74,21 @@ def trapezoidal(net, system, rest, burst, rate):
                     for c, g in zip(electrodes, slopes):
                         if c is not None and g:
                             J += g * np.outer(e[0], c[0])
+            return f, J
+
+        f, J = residual(v)
+        for iteration in range(200):
             d = np.linalg.solve(J, f)
-            v = v - d
+            share = 1.0
+            new_f, new_J = residual(v - d)
+            while iteration > 10 and np.abs(new_f).max() > np.abs(f).max() and share > 1e-3:
+                share *= 0.5  # a kink of the law between the two points: shorten the step
+                new_f, new_J = residual(v - share * d)
+            v, f, J = v - share * d, new_f, new_J
             if np.max(np.abs(d)) < 1e-9:
                 break
         else:
-            raise RuntimeError("trapezoidal step did not converge")
+            raise RuntimeError(f"trapezoidal step {step} did not converge")
         for k, (r, a, b, g) in enumerate(caps):
             new = across(r, a, b, v, s)
             cap_i[k] = g * (new - cap_v[k]) - cap_i[k]

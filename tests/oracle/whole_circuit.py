@@ -132,12 +132,12 @@ def run_case(case, folder, out, only_level=None, log=print):
             f"{tally['evaluations']} evaluations")
 
 
-def trapezoidal_floor(case, folder, out):
+def trapezoidal_floor(case, folder, out, only_level=None):
     """Error of a plain trapezoidal solution at 384 kHz against the recorded result: what that rule can reach at best."""
     tube_for = tube_source(folder / case["catalog"] if "catalog" in case else None, case.get("sets", {}))
     for level in LEVELS:
         recorded = out / f"{case['name']}-{level}.json"
-        if not recorded.exists():
+        if not recorded.exists() or only_level not in (None, level):
             continue
         header = json.loads(recorded.read_text())
         _, net, system, rest = load(folder / case["design"], tube_for, case.get("gain_setting"))
@@ -193,7 +193,7 @@ def main():
                 continue
         found = True
         if args.trapezoidal:
-            trapezoidal_floor(case, args.cases.resolve().parent, args.out)
+            trapezoidal_floor(case, args.cases.resolve().parent, args.out, level)
             continue
         run_case(case, args.cases.resolve().parent, args.out, level, lambda line: print(line, flush=True))
     if not found:
