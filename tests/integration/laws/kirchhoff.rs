@@ -92,7 +92,7 @@ fn outcome(seed: u64, catalog: &Catalog) -> Outcome {
         None,
         LoadKind::Rated,
     ) {
-        Err(fault) => Outcome::Failed(seed, fault.to_string()),
+        Err(fault) => Outcome::Failed(seed, format!("{fault}\n{}", random_design(seed))),
         Ok(amp) => {
             let (worst, node) = imbalance(&amp);
             Outcome::Solved {

@@ -11,7 +11,7 @@ use rayon::prelude::*;
 use super::{RATE_HZ, amplifier, harmonics, middle_setting, prepared, settings, shipped};
 
 /// Loudest output of a silent input, in volts: -180 dB re 1 V.
-const SILENCE_V: f64 = 1e-9;
+pub const SILENCE_V: f64 = 1e-9;
 /// Half a step of 24 bits, as a share of full scale; full scale is taken as 1 V, less than any design puts out.
 const HALF_STEP_24_BIT: f64 = 0.5 / 8_388_608.0;
 
