@@ -41,10 +41,12 @@ const ITERATIONS: usize = 200;
 /// Smallest step of the drives, as a share of their full values.
 const SMALLEST_STEP_UP: f64 = 1e-4;
 /// Settling in time: first and last conductance of the capacitors' steps, in siemens; largest change a step may make,
-/// in volts; ohms of an inductor's step per siemens of a capacitor's; most steps. Chosen; only whether it arrives counts.
+/// in volts and as a share of the largest; ohms of an inductor's step per siemens of a capacitor's; most steps.
+/// Chosen; only whether it arrives counts.
 const RELAX_FIRST_S: f64 = 1.0;
 const RELAX_LAST_S: f64 = 1e-13;
 const RELAX_LIMIT_V: f64 = 10.0;
+const RELAX_SHARE: f64 = 0.05;
 const RELAX_OHMS_PER_S: f64 = 1e4;
 const RELAX_STEPS: usize = 3000;
 /// Change of node volts that counts as none, in volts.
@@ -304,6 +306,10 @@ impl<'a> System<'a> {
         for _ in 0..RELAX_STEPS {
             *iterations += 1;
             let f = self.assemble(&x, 1.0, device, Some(&mut jacobian));
+            let limit = x
+                .iter()
+                .take(nodes)
+                .fold(RELAX_LIMIT_V, |m, v| m.max(RELAX_SHARE * v.abs()));
             let mut held = jacobian.clone();
             for k in 0..self.size {
                 // An inductor's row is its volts: L di/dt has the other sign there.
@@ -314,18 +320,14 @@ impl<'a> System<'a> {
                 s.iter().take(nodes).fold(0.0f64, |m, d| m.max(d.abs()))
             });
             match step {
-                Some(step) if largest < RELAX_LIMIT_V => {
+                Some(step) if largest < limit => {
                     x += step;
-                    g *= if largest < 0.25 * RELAX_LIMIT_V {
-                        0.5
-                    } else {
-                        1.0
-                    };
+                    g *= if largest < 0.5 * limit { 0.5 } else { 1.0 };
                     if g < RELAX_LAST_S {
                         break;
                     }
                 }
-                _ => g *= 8.0,
+                _ => g *= 3.0,
             }
         }
         x
