@@ -1,5 +1,10 @@
 //! Smooth tables over two coordinates.
 
+#[cfg(target_arch = "x86_64")]
+use std::arch::x86_64::{
+    __m128d, _mm_add_pd, _mm_cvtsd_f64, _mm_mul_pd, _mm_set_pd, _mm_set1_pd, _mm_unpackhi_pd,
+};
+
 /// A bicubic Hermite table on a uniform grid: value and slopes are continuous across cells.
 ///
 /// Built from value, slope over x, slope over y and cross slope at every grid point; kept as the sixteen
@@ -84,6 +89,91 @@ pub struct Spot {
     oy: f64,
 }
 
+/// The four coefficients of one power of y, in two pairs: what any x86-64 processor does at once.
+///
+/// Left to itself the compiler takes them one by one, which makes a render of one lane a tenth slower.
+#[cfg(target_arch = "x86_64")]
+#[derive(Clone, Copy)]
+struct Row(__m128d, __m128d);
+
+#[cfg(target_arch = "x86_64")]
+impl Row {
+    #[inline(always)]
+    fn new(c: [f64; 4]) -> Row {
+        // SAFETY: SSE2 is part of every x86-64 processor.
+        unsafe { Row(_mm_set_pd(c[1], c[0]), _mm_set_pd(c[3], c[2])) }
+    }
+
+    /// This row plus `k` times the other.
+    #[inline(always)]
+    fn plus(self, other: Row, k: f64) -> Row {
+        // SAFETY: as in `new`.
+        unsafe {
+            let k = _mm_set1_pd(k);
+            Row(
+                _mm_add_pd(self.0, _mm_mul_pd(k, other.0)),
+                _mm_add_pd(self.1, _mm_mul_pd(k, other.1)),
+            )
+        }
+    }
+
+    /// First pair plus `k` times the second.
+    #[inline(always)]
+    fn fold(self, k: f64) -> [f64; 2] {
+        // SAFETY: as in `new`.
+        let sum = unsafe { _mm_add_pd(self.0, _mm_mul_pd(_mm_set1_pd(k), self.1)) };
+        let [even, odd, ..] = Row(sum, sum).parts();
+        [even, odd]
+    }
+
+    #[inline(always)]
+    fn parts(self) -> [f64; 4] {
+        // SAFETY: as in `new`.
+        unsafe {
+            [
+                _mm_cvtsd_f64(self.0),
+                _mm_cvtsd_f64(_mm_unpackhi_pd(self.0, self.0)),
+                _mm_cvtsd_f64(self.1),
+                _mm_cvtsd_f64(_mm_unpackhi_pd(self.1, self.1)),
+            ]
+        }
+    }
+}
+
+/// The four coefficients of one power of y.
+#[cfg(not(target_arch = "x86_64"))]
+#[derive(Clone, Copy)]
+struct Row([f64; 4]);
+
+#[cfg(not(target_arch = "x86_64"))]
+impl Row {
+    #[inline(always)]
+    fn new(c: [f64; 4]) -> Row {
+        Row(c)
+    }
+
+    /// This row plus `k` times the other.
+    #[inline(always)]
+    fn plus(mut self, other: Row, k: f64) -> Row {
+        for (a, b) in self.0.iter_mut().zip(other.0) {
+            *a += k * b;
+        }
+        self
+    }
+
+    /// First pair plus `k` times the second.
+    #[inline(always)]
+    fn fold(self, k: f64) -> [f64; 2] {
+        let [a, b, c, d] = self.0;
+        [a + k * c, b + k * d]
+    }
+
+    #[inline(always)]
+    fn parts(self) -> [f64; 4] {
+        self.0
+    }
+}
+
 /// Values and slopes at both ends of a unit interval to the coefficients of the cubic through them.
 fn cubic([f0, f1, d0, d1]: [f64; 4]) -> [f64; 4] {
     [
@@ -160,18 +250,17 @@ impl<const N: usize> Table<N> {
     /// Value and both slopes of one quantity.
     #[inline(always)]
     pub fn sample(&self, s: &Spot, quantity: usize) -> Sample {
-        let c = self.coefficients(s, quantity);
+        let [c0, c1, c2, c3] = self.coefficients(s, quantity).map(Row::new);
         let (x, y) = (s.tx, s.ty);
-        let mut r = [0.0; 4];
-        let mut d = [0.0; 4];
-        for i in 0..4 {
-            r[i] = c[0][i] + y * (c[1][i] + y * (c[2][i] + y * c[3][i]));
-            d[i] = c[1][i] + y * (2.0 * c[2][i] + 3.0 * y * c[3][i]);
-        }
-        let x2 = x * x;
-        let mut f = (r[0] + x * r[1]) + x2 * (r[2] + x * r[3]);
-        let fx = r[1] + x * (2.0 * r[2] + 3.0 * x * r[3]);
-        let fy = (d[0] + x * d[1]) + x2 * (d[2] + x * d[3]);
+        let (x2, y2) = (x * x, y * y);
+        let r = c0.plus(c1, y).plus(c2.plus(c3, y), y2);
+        let d = c1.plus(c2, 2.0 * y).plus(c3, 3.0 * y2);
+        // Even and odd powers of x, of the value beside the slope over y.
+        let ([f_even, f_odd], [fy_even, fy_odd]) = (r.fold(x2), d.fold(x2));
+        let mut f = f_even + x * f_odd;
+        let fy = fy_even + x * fy_odd;
+        let [_, r1, r2, r3] = r.parts();
+        let fx = (r1 + 2.0 * x * r2) + 3.0 * x2 * r3;
         if s.ox != 0.0 || s.oy != 0.0 {
             f += s.ox * fx + s.oy * fy;
         }
@@ -188,13 +277,11 @@ impl<const N: usize> Table<N> {
         if s.ox != 0.0 || s.oy != 0.0 {
             return self.sample(s, quantity).f;
         }
-        let c = self.coefficients(s, quantity);
+        let [c0, c1, c2, c3] = self.coefficients(s, quantity).map(Row::new);
         let (x, y) = (s.tx, s.ty);
-        let mut r = [0.0; 4];
-        for i in 0..4 {
-            r[i] = c[0][i] + y * (c[1][i] + y * (c[2][i] + y * c[3][i]));
-        }
-        (r[0] + x * r[1]) + x * x * (r[2] + x * r[3])
+        let r = c0.plus(c1, y).plus(c2.plus(c3, y), y * y);
+        let [even, odd] = r.fold(x * x);
+        even + x * odd
     }
 }
 

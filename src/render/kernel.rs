@@ -218,7 +218,7 @@ impl<const L: usize> Kernel<L> {
         self.supply.before();
         let rails = self.draw_last.len();
         for (r, volts) in self.rail_volts.iter_mut().enumerate() {
-            *volts = *self.supply.open(r);
+            *volts = self.supply.open(r);
             let row = &self.rail_impedance[r * rails..(r + 1) * rails];
             for (z, (last, before)) in row.iter().zip(self.draw_last.iter().zip(&self.draw_before))
             {
@@ -257,7 +257,9 @@ impl<const L: usize> Kernel<L> {
                 }
             }
         }
-        self.supply.i.copy_from_slice(&self.draw_last);
+        for (i, draw) in self.supply.i.iter_mut().zip(&self.draw_last) {
+            *i = *draw;
+        }
         self.supply.after();
         let top = self.blocks[self.output].watched();
         let rail = self.rail_volts[self.output_rail];
@@ -268,7 +270,7 @@ impl<const L: usize> Kernel<L> {
     #[inline(always)]
     fn solve_stage(&mut self, k: usize, tally: &mut Tally) {
         let ports = self.ports[k];
-        let at = |(block, port): (usize, usize)| V(*self.blocks[block].open(port));
+        let at = |(block, port): (usize, usize)| V(self.blocks[block].open(port));
         let open = Open {
             grid: at(ports.grid),
             plate: at(ports.plate),

@@ -6,8 +6,8 @@ use crate::circuit::companion::{Form, Input, Network};
 /// Rows are kept in groups of this many, padded with zeros, so that they go through the processor side by side.
 const GROUP: usize = 4;
 
-/// The rows of one group in every lane.
-type Rows<const L: usize> = [[f64; L]; GROUP];
+/// The rows of one group, lane after lane.
+type Rows<const L: usize> = [[f64; GROUP]; L];
 
 /// The coefficients of one group of rows, column by column.
 struct Group<const L: usize> {
@@ -72,12 +72,12 @@ impl<const L: usize> Block<L> {
             }
         };
         let column = |g: usize, k: usize| -> Rows<L> {
-            std::array::from_fn(|r| std::array::from_fn(|l| entry(g * GROUP + r, k, l)))
+            std::array::from_fn(|l| std::array::from_fn(|r| entry(g * GROUP + r, k, l)))
         };
         let groups = (0..groups)
             .map(|g| Group {
-                constant: std::array::from_fn(|r| {
-                    std::array::from_fn(|l| lanes[l].get(g * GROUP + r).map_or(0.0, |f| f.constant))
+                constant: std::array::from_fn(|l| {
+                    std::array::from_fn(|r| lanes[l].get(g * GROUP + r).map_or(0.0, |f| f.constant))
                 }),
                 states: (0..nx).map(|k| column(g, k)).collect(),
                 inputs: (nx..nx + nu).map(|k| column(g, k)).collect(),
@@ -96,7 +96,7 @@ impl<const L: usize> Block<L> {
                 .collect(),
             u: vec![[0.0; L]; nu],
             i: vec![[0.0; L]; np],
-            rows: vec![[[0.0; L]; GROUP]; count.div_ceil(GROUP)],
+            rows: vec![[[0.0; GROUP]; L]; count.div_ceil(GROUP)],
         }
     }
 
@@ -104,9 +104,9 @@ impl<const L: usize> Block<L> {
     #[inline(always)]
     fn add(mut sum: Rows<L>, columns: &[Rows<L>], quantities: &[[f64; L]]) -> Rows<L> {
         for (c, q) in columns.iter().zip(quantities) {
-            for r in 0..GROUP {
-                for l in 0..L {
-                    sum[r][l] += c[r][l] * q[l];
+            for l in 0..L {
+                for r in 0..GROUP {
+                    sum[l][r] += c[l][r] * q[l];
                 }
             }
         }
@@ -131,32 +131,32 @@ impl<const L: usize> Block<L> {
         for (rows, g) in self.rows.iter_mut().zip(&self.groups) {
             *rows = Self::add(*rows, &g.currents, &self.i);
         }
-        for (k, x) in self.x.iter_mut().enumerate() {
-            let row = self.ports + k;
-            *x = self.rows[row / GROUP][row % GROUP];
+        for k in 0..self.x.len() {
+            self.x[k] = self.row(self.ports + k);
         }
     }
 
     #[inline(always)]
-    fn row(&self, row: usize) -> &[f64; L] {
-        &self.rows[row / GROUP][row % GROUP]
+    fn row(&self, row: usize) -> [f64; L] {
+        let rows = &self.rows[row / GROUP];
+        std::array::from_fn(|l| rows[l][row % GROUP])
     }
 
     /// Open-circuit volts of a port; call after [`Block::before`].
     #[inline(always)]
-    pub fn open(&self, port: usize) -> &[f64; L] {
+    pub fn open(&self, port: usize) -> [f64; L] {
         self.row(port)
     }
 
     /// Draw on the k-th of [`Block::draws`]; call after [`Block::after`].
     #[inline(always)]
-    pub fn draw(&self, k: usize) -> &[f64; L] {
+    pub fn draw(&self, k: usize) -> [f64; L] {
         self.row(self.ports + self.states + k)
     }
 
     /// Volts of the watched node; call after [`Block::after`].
     #[inline(always)]
-    pub fn watched(&self) -> &[f64; L] {
+    pub fn watched(&self) -> [f64; L] {
         self.row(self.ports + self.states + self.draws.len())
     }
 }
