@@ -66,7 +66,7 @@ pub struct Handed<const L: usize> {
     relief: V<L>,
 }
 
-/// Times read: surface looks, and lanes that left the surface or did not settle.
+/// Counts over a step: looks at a surface, and lanes that left the surface or did not settle.
 #[derive(Clone, Copy, Debug, Default)]
 pub struct Tally {
     pub looks: u64,
@@ -323,9 +323,7 @@ impl<const L: usize> Cell<L> {
             let f_v = V([1.0; L]) + r * (grid.fx + through_gp_v + g_gk * (V([1.0; L]) - vk_v));
             per_slope = f_v.map(|d| 1.0 / d);
             step = (-f * per_slope).map(bounded);
-            for l in 0..L {
-                done[l] = settled(step.0[l]);
-            }
+            done = step.0.map(settled);
             if done.iter().all(|d| *d) {
                 break;
             }
@@ -342,8 +340,9 @@ impl<const L: usize> Cell<L> {
             plate.fy + plate.fx * v_over_e,
             grid.fy + grid.fx * v_over_e,
         ];
-        for l in 0..L {
-            if done[l] {
+        for (l, done) in done.into_iter().enumerate() {
+            // A lane that did not settle keeps its last currents.
+            if done {
                 self.ip.0[l] = new[0].0[l];
                 self.ig.0[l] = new[1].0[l];
                 self.v_over_e.0[l] = new[2].0[l];
@@ -352,14 +351,14 @@ impl<const L: usize> Cell<L> {
             }
             // Below its lower edge the tube is off and the surface's straight continuation exact.
             let surface = &*self.surfaces[l];
-            if !done[l] || !surface.covers(v.0[l].max(surface.extent.v.0), e.0[l]) {
+            if !done || !surface.covers(v.0[l].max(surface.extent.v.0), e.0[l]) {
                 tally.strayed += 1;
             }
         }
         self.v = v;
         if self.has_screen {
-            for l in 0..L {
-                let (is, dp, ds_is) = self.surfaces[l].screen(&spots[l]);
+            for (l, spot) in spots.iter().enumerate() {
+                let (is, dp, ds_is) = self.surfaces[l].screen(spot);
                 self.is.0[l] = is + ds.0[l] * ds_is;
                 self.dp_last.0[l] = dp;
             }
