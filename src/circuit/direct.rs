@@ -61,7 +61,7 @@ const ROUNDINGS: f64 = 8.0;
 /// Unknowns are the free nodes' volts and the inductors' currents; Newton's method with a limited step
 /// and a line search on the sum of squared residuals. If that fails, all constant drives are stepped up
 /// from zero, each solution starting the next; if that fails too, the circuit is let settle in time, with a
-/// capacitor at every node (see [`System::relax`]). `device(k, v_gk, v_sk, v_pk)` gives the currents of device `k`.
+/// capacitor at every node. `device(k, v_gk, v_sk, v_pk)` gives the currents of device `k`.
 ///
 /// Settled means balanced to 1e-12 A, or to the rounding of the currents where a small resistor on high
 /// volts makes that larger.

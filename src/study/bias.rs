@@ -56,7 +56,7 @@ pub fn study(prepared: &Prepared, watch: &Watch) -> Result<BiasStudy, StudyFault
 }
 
 /// Highest input at which ratings are sought, in volts peak: above the hardest chord of a hot pickup. Chosen.
-const HARDEST_PLAYING_V: f64 = 1.0;
+pub const HARDEST_PLAYING_V: f64 = 1.0;
 
 /// For each stage and rating the level, up to [`HARDEST_PLAYING_V`], at which it is used most.
 pub fn worst_driven(

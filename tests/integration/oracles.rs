@@ -229,26 +229,43 @@ fn the_renderer_meets_the_whole_circuit_solution() {
     assert!(missed.is_empty(), "missed: {missed:?}");
 }
 
-/// The recovery after blocking meets its figure; the burst itself does not: see [`what_costs_the_residual`].
+/// Cases whose burst in blocking misses its figure by what the trapezoidal step costs: see [`what_costs_the_residual`].
+const MISSED_BY_THE_STEP: [&str; 3] = [
+    "corner_room_5-blocking",
+    "ensemble_room_5-blocking",
+    "rehearsal_nook_6-blocking",
+];
+
 #[test]
-#[ignore = "misses -75 dB: -70.3 dB (output stage alone), -62.8 dB (three stages), -61.0 dB (two stages); all of it the \
-            step: surfaces three times as fine change 0.1 dB, half the step brings -82, -73 and -70 dB"]
 fn the_renderer_meets_the_whole_circuit_solution_in_blocking() {
+    let missed: Vec<String> = missed(&["blocking"])
+        .into_iter()
+        .filter(|name| !MISSED_BY_THE_STEP.contains(&name.as_str()))
+        .collect();
+    assert!(missed.is_empty(), "missed: {missed:?}");
+}
+
+#[test]
+#[ignore = "misses -75 dB: corner_room_5 -74.6 dB, ensemble_room_5 -72.4 dB, rehearsal_nook_6 -66.0 dB; the recovery meets it"]
+fn every_design_meets_the_whole_circuit_solution_in_blocking() {
     let missed = missed(&["blocking"]);
     assert!(missed.is_empty(), "missed: {missed:?}");
 }
 
-/// What blocking does reach: a regression here is a fault of the renderer, not of the step.
+/// Where the figure is missed it is by the step alone: halved, every case meets it.
 #[test]
 fn blocking_is_off_by_the_step_alone() {
-    const REACHED_DB: f64 = -60.0;
-    const RECOVERY_DB: f64 = -75.0;
-    for case in cases().iter().filter(|c| c.name.ends_with("-blocking")) {
-        let (in_burst, recovery, _) = check(case);
-        assert!(in_burst < REACHED_DB, "{}: {in_burst:.1} dB", case.name);
+    for case in cases()
+        .iter()
+        .filter(|c| MISSED_BY_THE_STEP.contains(&c.name.as_str()))
+    {
+        let split = (number(&case.meta, "/input/burst_end_s") * BASE_RATE).round() as usize;
+        let (ours, _) = rendered_with(case, Fineness::default(), 2);
+        let halved = residual_db(&ours[..split], &case.frames[..split]);
+        println!("{:32} step halved {halved:7.1} dB", case.name);
         assert!(
-            recovery.is_some_and(|r| r < RECOVERY_DB),
-            "{}: {recovery:?}",
+            halved < limit_db("blocking"),
+            "{}: {halved:.1} dB with the step halved",
             case.name
         );
     }
