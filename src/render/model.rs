@@ -290,7 +290,8 @@ fn build_surface(
     }
     // The input's peak reaches the grid unweakened only where nothing but the jack stands before it.
     let source = instantaneous(networks, Port::Grid(k), Port::Grid(k));
-    let own_rise = s.r_k * device.currents(0.0, s_rest, volts[d.plate]).ip;
+    // An unbypassed cathode follows its grid: as far as the tube can pull it up while the grid conducts.
+    let own_rise = s.r_k * device.currents(1.0, s_rest, 0.5 * supply).ip;
     let direct = if k == 0 && source < 1e3 {
         input_peak
     } else {

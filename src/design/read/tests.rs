@@ -41,7 +41,7 @@ fn the_first_shipped_design_comes_out_as_it_is_written() {
     assert_eq!(design.control.settings, [2.0, 5.0, 10.0]);
     assert_eq!(design.control.test_level, VoltsPeak(0.2));
     assert_eq!(design.jack_source_resistance, Ohms(0.0));
-    let volts = Volts(265.0);
+    let volts = Volts(250.0);
     let resistance = Ohms(150.0);
     assert_eq!(design.supply.source, Source::Plain { volts, resistance });
     let feeds: Vec<_> = design.supply.rails.iter().map(|rail| rail.from).collect();
@@ -98,7 +98,7 @@ fn the_first_shipped_design_comes_out_as_it_is_written() {
     let screen = power.screen.as_ref().expect("a screen");
     assert_eq!(
         (screen.rail, screen.resistor, screen.capacitor),
-        (1, Some(Ohms(470.0)), None)
+        (1, Some(Ohms(4700.0)), None)
     );
     assert_eq!(design.transformer.low_corner, Some(Hertz(70.0)));
     assert_eq!(design.transformer.corner_drop_db, 3.0);
@@ -135,7 +135,7 @@ fn rails_come_out_parents_first_whatever_their_order_in_the_file() {
 
 #[test]
 fn a_bare_number_stands_in_the_base_unit() {
-    let design = replaced("volts = \"265V\"", "volts = 265");
+    let design = replaced("volts = \"250V\"", "volts = 250");
     assert_eq!(design, with(&[]));
     let design = replaced("capacitor = \"47u\"", "capacitor = 47e-6");
     assert_eq!(design, with(&[]));
@@ -206,7 +206,7 @@ fn a_rectified_winding_is_read_with_each_rectifier() {
         ),
     ] {
         let design = replaced(
-            "volts = \"265V\"\nresistance = \"150R\"",
+            "volts = \"250V\"\nresistance = \"150R\"",
             &format!("secondary_rms = \"230V\"\nwinding_resistance = \"110R\"\nrectifier = {word}"),
         );
         let expected = Source::Rectified {
@@ -220,7 +220,7 @@ fn a_rectified_winding_is_read_with_each_rectifier() {
 
 #[test]
 fn branches_with_two_parts_and_rheostats_are_read() {
-    let old = "name = \"stopper\"\n  place = \"series\"\n  resistor = \"4k7\"";
+    let old = "name = \"stopper\"\n  place = \"series\"\n  resistor = \"22k\"";
     let branch = |text: &str| {
         let design = replaced(old, &format!("name = \"stopper\"\n  {text}"));
         design.stages[2].input[2].kind.clone()

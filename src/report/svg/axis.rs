@@ -171,8 +171,11 @@ pub fn hertz(value: f64) -> String {
     }
 }
 
-/// 5 mV, 200 mV, 1 V.
+/// 5 mV, 0.2 V, 1 V: from 0.1 V in volts, since "100 mV" would touch "200 mV".
 pub fn volts(value: f64) -> String {
+    if (0.0999..0.9999).contains(&value.abs()) {
+        return format!("{} V", plain(value)).replace('-', "\u{2212}");
+    }
     crate::report::phrase::short(value, "V").replace('-', "\u{2212}")
 }
 

@@ -36,7 +36,10 @@ pub fn distortion_svg(study: &RenderStudy) -> String {
         );
     }
     let test = Stroke::dashed(style::FAINT_INK, 1.2, "7 4");
-    let words = format!("test level {}", axis::volts(study.test_level_v_peak));
+    let words = format!(
+        "test level {}",
+        crate::report::phrase::short(study.test_level_v_peak, "V")
+    );
     plot.upright(&mut canvas, study.test_level_v_peak, &test, &words);
 
     let mut entries = Vec::new();
