@@ -12,3 +12,4 @@ mod oracles;
 mod published_measures;
 mod published_tubes;
 mod report_bias;
+mod shipped;
